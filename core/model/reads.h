@@ -1,0 +1,58 @@
+/* reads.h - what a sensor reads: z = h(x) + v, with H = dh/dx.
+ *
+ * Every component is one of
+ *   linear    sum of coefficient * state  (a state alone: coefficient 1)
+ *   range     distance between a point of states or constants and a fixed one,
+ *             2 or 3 coordinates
+ *   bearing   turn * (angle of (x - x0, y - y0)) - zero, in radians, wrapped;
+ *             the angle runs from the first axis towards the second
+ * A `range-bearing` sensor is two components.  Units: linear in the unit of
+ * the states; range in the unit of its coordinates; bearing in radians.
+ */
+/* SPDX-License-Identifier: Apache-2.0 */
+#ifndef CORE_MODEL_READS_H
+#define CORE_MODEL_READS_H
+
+#include <stdbool.h>
+
+enum { READS_MAX = 8, READS_TERMS_MAX = 12 };
+
+enum reads_kind { READS_LINEAR, READS_RANGE, READS_BEARING };
+
+struct reads_term {
+    int state;    /* index in the layout, -1 for a constant coordinate    */
+    double value; /* linear: coefficient; coordinate: the constant        */
+};
+
+struct reads_row {
+    enum reads_kind kind;
+    int n_terms;                             /* range 2-3, bearing 2      */
+    struct reads_term term[READS_TERMS_MAX]; /* linear terms or coordinates */
+    double from[3];                          /* the fixed point           */
+    double zero_rad;                         /* bearing: direction that
+                                                reads 0, from the first axis
+                                                towards the second        */
+    double turn; /* bearing: +1 grows from the first axis towards the second,
+                    -1 the other way                                      */
+};
+
+struct reads {
+    int m; /* components of z                                             */
+    struct reads_row row[READS_MAX];
+};
+
+bool reads_is_linear(const struct reads *r);
+
+/* True if row i reads an angle: its difference is wrapped to (-pi, pi]. */
+bool reads_wraps(const struct reads *r, int i);
+
+/* Row i at x (n states): returns h, fills H (n values, zeros included).  At
+ * the place of the sensor itself, where a range or bearing has no
+ * derivative, H is all zero: such a component says nothing. */
+double reads_row_at(const struct reads *r, int i, int n, const double *x,
+                    double *H);
+
+/* z - h with angles wrapped. */
+double reads_difference(const struct reads *r, int i, double z, double h);
+
+#endif
