@@ -52,6 +52,16 @@ double ud_innovation_variance(int n, const double *ud, const double *h,
  * W is destroyed.  Rows that depend on later ones give D = 0. [THO76] */
 void ud_gram_schmidt(int n, int k, double *W, const double *w, double *ud);
 
+/* ud = factors of W diag(D) W' + V diag(Qd) V': the time update, with W = Phi U
+ * and V diag(Qd) V' = Q, both n x n row-major and destroyed.  is_upper: both
+ * are zero below the diagonal, which halves the work. [THO76] */
+void ud_predict(int n, bool is_upper, double *W, double *V, const double *D,
+                const double *Qd, double *ud);
+
+/* d' P^-1 d; a direction that P says is certain (D = 0) counts as infinite
+ * unless d has no part in it.  work: n values. */
+double ud_distance(int n, const double *ud, const double *d, double *work);
+
 /* P = S P S for S = diag(s), s_i > 0: U_ij = U_ij s_i / s_j, D_j = D_j s_j^2.
  * Exact but for rounding; used to widen a track. */
 void ud_scale(int n, double *ud, const double *s);

@@ -1,0 +1,317 @@
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "core/engine/engine.h"
+
+#include "core/engine/engine_state.h"
+#include "core/math/real.h"
+
+/* --- memory ---------------------------------------------------------------- */
+
+static size_t largest_state(const struct rig *rig)
+{
+    size_t largest = 0;
+    for (int i = 0; i < rig->n_kinds; i++) {
+        size_t bytes = track_size(rig, i).state_bytes;
+        largest = bytes > largest ? bytes : largest;
+    }
+    return largest;
+}
+
+static void lay_out(struct engine *e, struct arena *arena,
+                    const struct rig *rig)
+{
+    size_t n = (size_t)rig->n_sensors;
+    e->counts = arena_take(arena, sizeof *e->counts + n * sizeof(struct ledger));
+    e->work = arena_take(arena, sizeof *e->work);
+    e->ahead = arena_take(arena, largest_state(rig));
+    e->local = arena_take(arena, n * sizeof *e->local);
+    e->of_kind = arena_take(arena, n * sizeof *e->of_kind);
+    e->silent = arena_take(arena, n * sizeof *e->silent);
+    e->seq = arena_take(arena, n * sizeof *e->seq);
+    e->summary = arena_take(arena, n * sizeof *e->summary);
+    e->budget = arena_take(arena, n * sizeof *e->budget);
+    e->incoming = arena_take(arena, sizeof *e->incoming +
+                                        2 * READS_MAX * sizeof(double));
+    e->estimate = arena_take(arena, sizeof *e->estimate +
+                                        (UD_MAX + UD_SIZE(UD_MAX)) *
+                                            sizeof(double));
+    roster_layout(&e->roster, rig, arena);
+    size_t places = (size_t)rig->max_tracks + RIG_KINDS_MAX;
+    e->touched = arena_take(arena, places * sizeof *e->touched);
+    e->due.heap = arena_take(arena, places * sizeof *e->due.heap);
+    e->due.at = arena_take(arena, places * sizeof *e->due.at);
+    e->due.time = arena_take(arena, places * sizeof *e->due.time);
+}
+
+size_t engine_bytes(const struct rig *rig)
+{
+    struct arena arena = {NULL, 0};
+    struct engine count;
+    arena_take(&arena, sizeof count);
+    lay_out(&count, &arena, rig);
+    return arena.used;
+}
+
+static void number_sensors(struct engine *e)
+{
+    int n = 0;
+    for (int k = 0; k < e->rig->n_kinds; k++) {
+        e->first_of_kind[k] = n;
+        for (int i = 0; i < e->rig->n_sensors; i++) {
+            if (e->rig->sensor[i].kind != k)
+                continue;
+            e->local[i] = (int16_t)(n - e->first_of_kind[k]);
+            e->of_kind[n++] = (int16_t)i;
+        }
+    }
+    e->first_of_kind[e->rig->n_kinds] = n;
+}
+
+struct engine *engine_init(void *memory, const struct rig *rig,
+                           struct message_sink sink)
+{
+    struct arena arena = {memory, 0};
+    struct engine *e = arena_take(&arena, sizeof *e);
+    lay_out(e, &arena, rig);
+    e->rig = rig;
+    e->sink = sink;
+    due_init(&e->due, e->roster.n_places > 0 ? e->roster.n_places : 1);
+    number_sensors(e);
+    size_t bytes = sizeof *e->counts +
+                   (size_t)rig->n_sensors * sizeof(struct ledger);
+    e->counts->head = (struct message){.bytes = (uint32_t)bytes,
+                                       .type = MESSAGE_COUNTS,
+                                       .kind = 0xffff};
+    e->counts->n_sensors = (uint32_t)rig->n_sensors;
+    return e;
+}
+
+static void refill(struct engine *e)
+{
+    for (int i = 0; i < e->rig->n_sensors; i++)
+        e->budget[i] = e->rig->max_steps;
+}
+
+void engine_start(struct engine *e, int64_t line_ns)
+{
+    e->now_ns = e->line_start_ns = line_ns;
+    refill(e);
+    roster_start(&e->roster, line_ns);
+}
+
+/* --- release and settle ----------------------------------------------------- */
+
+static struct lay laying(struct engine *e)
+{
+    return (struct lay){e->rig, e->work, &e->steps};
+}
+
+/* n_before: steps that were laid before the newest arrivals went in. */
+static void release(struct engine *e, struct track *t, int n_before,
+                    int64_t until_ns)
+{
+    struct lay lay = laying(e);
+    int n = track_lay(t, &lay, until_ns);
+    if (n > 0)
+        speak_live(e, t, n - (t->n_laid - n_before));
+}
+
+static void count_settled(struct engine *e, struct track *t, struct step *s)
+{
+    struct watch *w = &t->watch[e->local[s->sensor]];
+    struct ledger *own = &e->counts->sensor[s->sensor];
+    bool is_used = s->flags & STEP_ACCEPTED;
+    enum outcome o = is_used ? OUTCOME_USED : OUTCOME_GATED;
+    own->outcome[OUTCOME_PENDING]--;
+    own->outcome[o]++;
+    e->counts->total.outcome[OUTCOME_PENDING]--;
+    e->counts->total.outcome[o]++;
+    w->pending--;
+    w->settled_t_ns = s->t_ns;
+    t->n_used += is_used;
+    if (s->dof == 0)
+        return;
+    w->summary.n++;
+    w->summary.nis_sum += s->nis;
+    if (!is_used)
+        return;
+    w->summary.n_accepted++;
+    w->summary.nis_accepted_sum += s->nis_used;
+    struct kf_seen seen = {.dof = s->dof, .nis = s->nis_used};
+    memcpy(seen.s, s->v + t->m_max, s->dof * sizeof(double));
+    t->loglik += kf_loglik(&seen);
+}
+
+static void settle(struct engine *e, struct track *t, int64_t before_ns)
+{
+    struct lay lay = laying(e);
+    while (t->n_settled < t->n_laid &&
+           track_step(t, t->n_settled)->t_ns < before_ns) {
+        const struct track_state *st;
+        struct step *s = track_settle(t, &lay, &st);
+        count_settled(e, t, s);
+        speak_settled(e, t, s, st);
+    }
+}
+
+static void give_up(struct engine *e, struct track *t)
+{
+    while (t->n > 0) {
+        int sensor = track_step(t, 0)->sensor;
+        e->counts->sensor[sensor].outcome[OUTCOME_PENDING]--;
+        e->counts->sensor[sensor].outcome[OUTCOME_UNKNOWN_TRACK]++;
+        e->counts->total.outcome[OUTCOME_PENDING]--;
+        e->counts->total.outcome[OUTCOME_UNKNOWN_TRACK]++;
+        track_drop_first(t);
+    }
+    roster_remove(&e->roster, t);
+}
+
+static void move_on(struct engine *e, struct track *t)
+{
+    int n_before = t->is_touched ? t->n_laid_before : t->n_laid;
+    t->is_touched = false;
+    if (t->is_confirmed) {
+        release(e, t, n_before, e->now_ns - e->rig->hold_ns);
+        settle(e, t, e->now_ns - e->rig->horizon_ns);
+    } else if (t->n > 0 && track_step(t, 0)->t_ns + TRACK_CANDIDATE_NS <
+                               e->now_ns - e->rig->horizon_ns) {
+        give_up(e, t);
+    }
+    intake_schedule(e, t);
+}
+
+static void run_due(struct engine *e)
+{
+    if (e->roster.n_places == 0)
+        return;
+    for (;;) {
+        int place = due_first(&e->due);
+        if (e->due.time[place] > e->now_ns)
+            break;
+        move_on(e, &e->roster.track[place]);
+    }
+}
+
+void engine_begin(struct engine *e, int64_t a_ns)
+{
+    e->now_ns = a_ns;
+    e->n_touched = 0;
+    e->refusal = NULL;
+    run_due(e);
+}
+
+void engine_end(struct engine *e)
+{
+    for (int i = 0; i < e->n_touched; i++)
+        move_on(e, &e->roster.track[e->touched[i]]);
+    e->n_touched = 0;
+}
+
+/* --- ticks ------------------------------------------------------------------- */
+
+static void retire(struct engine *e, struct track *t)
+{
+    const struct track_state *tip = track_tip(t);
+    if (!t->kind->is_prefix || !t->is_confirmed || t->n > t->n_settled || !tip)
+        return;
+    if (e->now_ns - tip->kf.t_ns <=
+        t->kind->lost_after_ns + TRACK_RETIRE_NS + e->rig->horizon_ns)
+        return;
+    speak_event(e, EVENT_RETIRED, t, -1, e->now_ns);
+    roster_remove(&e->roster, t);
+    intake_schedule(e, t);
+}
+
+void engine_tick(struct engine *e, int64_t tick_ns)
+{
+    e->now_ns = tick_ns;
+    run_due(e);
+    for (int i = 0; i < e->roster.n; i++) {
+        struct track *t = &e->roster.track[e->roster.by_id[i]];
+        if (t->is_confirmed)
+            speak_judge_live(e, t, true);
+    }
+    if (tick_ns % 1000000000 != 0)
+        return;
+    refill(e);
+    for (int i = e->roster.n - 1; i >= 0; i--)
+        retire(e, &e->roster.track[e->roster.by_id[i]]);
+}
+
+void engine_finish(struct engine *e)
+{
+    for (int i = e->roster.n - 1; i >= 0; i--) {
+        struct track *t = &e->roster.track[e->roster.by_id[i]];
+        if (!t->is_confirmed) {
+            give_up(e, t);
+            intake_schedule(e, t);
+        }
+    }
+    for (int i = 0; i < e->roster.n; i++) {
+        struct track *t = &e->roster.track[e->roster.by_id[i]];
+        release(e, t, t->n_laid, INT64_MAX);
+        settle(e, t, INT64_MAX);
+        intake_schedule(e, t);
+    }
+}
+
+void engine_reanchor(struct engine *e, int64_t line_ns)
+{
+    engine_finish(e);
+    int64_t was_ns = e->now_ns;
+    e->now_ns = e->line_start_ns = line_ns;
+    speak_event(e, EVENT_REANCHOR, NULL, -1, line_ns);
+    for (int i = 0; i < e->roster.n; i++) {
+        struct track *t = &e->roster.track[e->roster.by_id[i]];
+        int n;
+        engine_sensors(e, t, &n);
+        track_reanchor(t, e->work);
+        for (int k = 0; k < n; k++) {
+            t->watch[k].heard_ns += line_ns - was_ns;
+            t->watch[k].settled_t_ns = INT64_MIN;
+        }
+        t->live.is_started = t->settled.is_started = false;
+        intake_schedule(e, t);
+    }
+}
+
+/* --- accounts ---------------------------------------------------------------- */
+
+struct counts *engine_counts(struct engine *e)
+{
+    return e->counts;
+}
+
+void engine_say_counts(struct engine *e, int64_t t_ns)
+{
+    e->counts->t_ns = t_ns;
+    e->sink.say(e->sink.ctx, &e->counts->head);
+}
+
+const char *engine_last_refusal(const struct engine *e)
+{
+    return e->refusal;
+}
+
+bool engine_track_summary(struct engine *e, int i, struct track_summary *out)
+{
+    if (i < 0 || i >= e->roster.n)
+        return false;
+    struct track *t = &e->roster.track[e->roster.by_id[i]];
+    int n;
+    const int16_t *sensor = engine_sensors(e, t, &n);
+    memset(e->summary, 0, (size_t)e->rig->n_sensors * sizeof *e->summary);
+    for (int k = 0; k < n; k++)
+        e->summary[sensor[k]] = t->watch[k].summary;
+    out->sensor = e->summary;
+    memcpy(out->id, t->id, sizeof out->id);
+    out->kind = t->kind_index;
+    out->loglik = t->loglik;
+    out->measurements = t->n_used;
+    return true;
+}
+
+uint64_t engine_steps(const struct engine *e)
+{
+    return e->steps;
+}

@@ -1,0 +1,393 @@
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "core/filter/kf.h"
+
+#include <math.h>
+#include <string.h>
+
+#include "core/math/real.h"
+
+/* A product whose terms cancel to below this share of their size is rounding,
+ * not information. */
+static const double cancelled = 1e-10;
+enum { ITERATIONS_MAX = 5, HALVINGS_MAX = 6 };
+
+size_t kf_bytes(const struct rig_kind *kind)
+{
+    size_t n = (size_t)kind->n;
+    return sizeof(struct kf) + (n + UD_SIZE(n) + n * n) * sizeof(double);
+}
+
+static void copy(const struct kf *from, struct kf *to)
+{
+    size_t n = (size_t)from->n, n_free = (size_t)from->n_free;
+    memcpy(to, from,
+           sizeof *from + (n + UD_SIZE(n) + n * n_free) * sizeof(double));
+}
+
+void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
+{
+    int n = kind->n;
+    f->t_ns = t_ns;
+    f->n = n;
+    f->n_free = 0;
+    memset(f->v, 0, kf_bytes(kind) - sizeof *f);
+    for (int i = 0; i < n; i++) {
+        const struct rig_state *s = &kind->state[i];
+        if (s->has_prior) {
+            kf_x(f)[i] = s->prior_mean;
+            kf_ud(f)[UD_AT(i, i)] = s->prior_u * s->prior_u;
+        } else {
+            kf_B(f)[n * f->n_free++ + i] = 1;
+        }
+    }
+}
+
+/* --- predict ------------------------------------------------------------- */
+
+/* W = Phi U, block rows only, and V = Qu filled with its zeros. */
+static void spread(const struct rig_kind *kind, const double *ud,
+                   struct kf_work *w)
+{
+    int n = kind->n;
+    double *V = w->W + n * n;
+    memset(w->W, 0, 2 * (size_t)(n * n) * sizeof(double));
+    for (int k = 0; k < kind->n_blocks; k++) {
+        int at = kind->block[k].at, end = at + kind->block[k].n;
+        for (int i = at; i < end; i++) {
+            const double *Phi = w->Phi + i * n;
+            double *Wi = w->W + i * n;
+            for (int c = i; c < end; c++) {
+                double phi = Phi[c];
+                Wi[c] += phi;
+                for (int j = c + 1; j < n; j++)
+                    Wi[j] += phi * ud[UD_AT(c, j)];  /* W = Phi U         */
+                V[i * n + c] = w->Qu[i * n + c];
+            }
+        }
+    }
+}
+
+static void move_free(const struct rig_kind *kind, struct kf_work *w,
+                      struct kf *f)
+{
+    int n = kind->n;
+    for (int k = 0; k < f->n_free; k++) {
+        double *B = kf_B(f) + n * k;
+        for (int b = 0; b < kind->n_blocks; b++) {
+            int at = kind->block[b].at, end = at + kind->block[b].n;
+            for (int i = at; i < end; i++) {
+                double sum = 0;
+                for (int c = i; c < end; c++)
+                    sum += w->Phi[i * n + c] * B[c];
+                B[i] = sum;                          /* B = Phi B         */
+            }
+        }
+    }
+}
+
+void kf_predict(const struct rig_kind *kind, struct kf_work *w,
+                const struct kf *from, int64_t t_ns, struct kf *to)
+{
+    int n = kind->n;
+    if (t_ns == from->t_ns) {
+        if (to != from)
+            copy(from, to);
+        return;
+    }
+    struct transition t = {n, w->Phi, w->Qu, w->Qd};
+    double dt_s = (double)(t_ns - from->t_ns) * 1e-9;
+    for (int k = 0; k < kind->n_blocks; k++)
+        block_transition(&kind->block[k], dt_s, &t);
+
+    const double *ud = from->v + n;
+    for (int i = 0; i < n; i++)
+        w->w[i] = ud[UD_AT(i, i)];
+    spread(kind, ud, w);
+    if (to != from) {
+        to->n = n;
+        to->n_free = from->n_free;
+        memcpy(to->v, from->v, (size_t)n * sizeof(double));
+        if (from->n_free > 0)
+            memcpy(kf_B(to), from->v + n + UD_SIZE(n),
+                   (size_t)(n * from->n_free) * sizeof(double));
+    }
+    to->t_ns = t_ns;
+    for (int k = 0; k < kind->n_blocks; k++)
+        block_move(&kind->block[k], &t, kf_x(to));
+    ud_predict(n, true, w->W, w->W + n * n, w->w, w->Qd, kf_ud(to));
+    if (to->n_free > 0)
+        move_free(kind, w, to);
+}
+
+/* --- what nothing has determined yet ------------------------------------- */
+
+/* The column of B that h sees best, -1 if h sees none; g = h B. */
+static int pivot(const struct kf *f, const double *B, const double *h,
+                 double *g)
+{
+    int best = -1;
+    double best_share = cancelled;
+    for (int k = 0; k < f->n_free; k++) {
+        double sum = 0, size = 0;
+        for (int i = 0; i < f->n; i++) {
+            double term = h[i] * B[f->n * k + i];
+            sum += term;
+            size += real_abs(term);
+        }
+        g[k] = sum;
+        double share = size > 0 ? real_abs(sum) / size : 0;
+        if (share > (best < 0 ? best_share : 2 * best_share)) {
+            best = k;
+            best_share = share;
+        }
+    }
+    return best;
+}
+
+/* Takes column p out of B: the others lose their part in g. */
+static void eliminate(struct kf *f, const double *g, int p)
+{
+    int n = f->n;
+    double *B = kf_B(f), *last = B + n * (f->n_free - 1);
+    for (int k = 0; k < f->n_free; k++) {
+        double share = g[k] / g[p];
+        for (int i = 0; i < n && k != p; i++) {
+            double was = B[n * k + i], part = B[n * p + i] * share;
+            double left = was - part;
+            bool is_rounding = real_abs(left) <=
+                               1e-13 * (real_abs(was) + real_abs(part));
+            B[n * k + i] = is_rounding ? 0 : left;
+        }
+    }
+    memmove(B + n * p, B + n * (p + 1),
+            (size_t)(n * (f->n_free - 1 - p)) * sizeof *B);
+    memset(last, 0, (size_t)n * sizeof *last);
+    f->n_free--;
+}
+
+/* The limit kappa -> infinity of an update that meets B [DK12] ch. 5:
+ *     K = b_p / (h b_p),  x = x + K y,
+ *     P = (I - K h) P (I - K h)' + K r K'. */
+static void determine(struct kf_work *w, struct kf *f, const double *h,
+                      double y, double r, int p, const double *g)
+{
+    int n = f->n, width = n + 1;
+    double *x = kf_x(f), *ud = kf_ud(f), *K = w->b;
+    for (int i = 0; i < n; i++)
+        K[i] = kf_B(f)[n * p + i] / g[p];            /* K = b / (h b)     */
+    for (int j = 0; j < n; j++) {
+        double hU = h[j];
+        for (int i = 0; i < j; i++)
+            hU += h[i] * ud[UD_AT(i, j)];
+        for (int i = 0; i < n; i++) {
+            double U = i < j ? ud[UD_AT(i, j)] : i == j ? 1 : 0;
+            w->W[i * width + j] = U - K[i] * hU;     /* (I - K h) U       */
+        }
+        w->w[j] = ud[UD_AT(j, j)];
+    }
+    for (int i = 0; i < n; i++) {
+        w->W[i * width + n] = K[i];
+        x[i] += K[i] * y;                            /* x = x + K y       */
+    }
+    w->w[n] = r;
+    ud_gram_schmidt(n, width, w->W, w->w, ud);
+    eliminate(f, g, p);
+}
+
+uint64_t kf_undetermined(const struct kf *f)
+{
+    const double *B = f->v + f->n + UD_SIZE(f->n);
+    uint64_t bits = 0;
+    for (int k = 0; k < f->n_free; k++)
+        for (int i = 0; i < f->n; i++)
+            if (B[f->n * k + i] != 0)
+                bits |= (uint64_t)1 << i;
+    return bits;
+}
+
+/* --- update --------------------------------------------------------------- */
+
+struct sight {
+    const struct reads *reads;
+    const double *z, *r;
+};
+
+/* One pass over the components, linearised at w->x (which stays), from the
+ * prior in *f.  y_i = z_i - h_i(x_lin) - H_i (x - x_lin). */
+static void pass(struct kf_work *w, struct kf *f, const struct sight *s,
+                 struct kf_seen *seen)
+{
+    int n = f->n;
+    double g[UD_MAX], *x = kf_x(f), *h = w->H;
+    seen->dof = seen->n_determined = 0;
+    seen->nis = 0;
+    for (int i = 0; i < s->reads->m; i++) {
+        seen->y[i] = real_nan();
+        if (s->z[i] != s->z[i])
+            continue;
+        double at = reads_row_at(s->reads, i, n, w->x, h);
+        double y = reads_difference(s->reads, i, s->z[i], at);
+        seen->y[i] = y;
+        for (int k = 0; k < n; k++)
+            y -= h[k] * (x[k] - w->x[k]);
+        int p = f->n_free > 0 ? pivot(f, kf_B(f), h, g) : -1;
+        if (p >= 0) {
+            determine(w, f, h, y, s->r[i], p, g);
+            seen->n_determined++;
+            continue;
+        }
+        double S = ud_update(n, kf_ud(f), h, s->r[i], w->b);
+        if (!(S > 0))
+            continue;
+        double gain = y / S;
+        for (int k = 0; k < n; k++)
+            x[k] += w->b[k] * gain;                  /* x = x + K y       */
+        seen->nis += y * gain;                       /* y' S^-1 y         */
+        seen->s[seen->dof++] = S;
+    }
+}
+
+static void restore(struct kf_work *w, struct kf *f)
+{
+    size_t n = (size_t)f->n;
+    memcpy(kf_x(f), w->start, n * sizeof(double));
+    memcpy(kf_ud(f), w->ud, UD_SIZE(n) * sizeof(double));
+}
+
+/* 1/2 (x - x0)' P0^-1 (x - x0) + 1/2 sum (z - h(x))^2 / r, the cost whose
+ * minimum is the most probable state. */
+static double cost(struct kf_work *w, int n, const struct sight *s,
+                   const double *x)
+{
+    double d[UD_MAX];
+    for (int k = 0; k < n; k++)
+        d[k] = x[k] - w->start[k];
+    double sum = ud_distance(n, w->ud, d, w->b);
+    for (int i = 0; i < s->reads->m; i++) {
+        if (s->z[i] != s->z[i])
+            continue;
+        double h = reads_row_at(s->reads, i, n, x, w->H);
+        double y = reads_difference(s->reads, i, s->z[i], h);
+        sum += y * y / s->r[i];
+    }
+    return sum / 2;
+}
+
+/* Gauss-Newton from the prior kept in w->start and w->ud [BC93]: every step
+ * is one pass linearised at the newest place, halved while the cost rises.
+ * The last pass takes H at the result, so P belongs to where x is. */
+static void iterate(struct kf_work *w, struct kf *f, const struct sight *s)
+{
+    int n = f->n;
+    double *x = kf_x(f), step[UD_MAX];
+    double was = cost(w, n, s, w->x);
+    struct kf_seen seen;
+    for (int i = 0; i < ITERATIONS_MAX; i++) {
+        for (int k = 0; k < n; k++)
+            step[k] = x[k] - w->x[k];
+        double now = cost(w, n, s, x);
+        for (int half = 0; half < HALVINGS_MAX && !(now <= was); half++) {
+            for (int k = 0; k < n; k++) {
+                step[k] /= 2;
+                x[k] = w->x[k] + step[k];
+            }
+            now = cost(w, n, s, x);
+        }
+        if (!(now <= was))
+            break;
+        bool is_settled = was - now <= 1e-12 * (1 + now);
+        was = now;
+        memcpy(w->x, x, (size_t)n * sizeof *x);
+        restore(w, f);
+        pass(w, f, s, &seen);
+        if (is_settled)
+            break;
+    }
+    memcpy(x, w->x, (size_t)n * sizeof *x);
+}
+
+double kf_loglik(const struct kf_seen *seen)
+{
+    double sum = seen->nis + seen->dof * REAL_LN_2PI;
+    for (int i = 0; i < seen->dof; i++)
+        sum += real_log(seen->s[i]);
+    return -sum / 2;                                 /* log N(y; 0, S)    */
+}
+
+bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
+               const struct reads *reads, const double *z, const double *r,
+               const double *gate, struct kf_seen *seen)
+{
+    size_t n = (size_t)kind->n;
+    int n_free = f->n_free;
+    struct sight sight = {reads, z, r};
+    memcpy(w->start, kf_x(f), n * sizeof(double));
+    memcpy(w->x, kf_x(f), n * sizeof(double));
+    memcpy(w->ud, kf_ud(f), UD_SIZE(n) * sizeof(double));
+    if (n_free > 0)
+        memcpy(w->B, kf_B(f), n * (size_t)n_free * sizeof(double));
+
+    pass(w, f, &sight, seen);
+    if (gate && seen->dof > 0 && !(seen->nis <= gate[seen->dof])) {
+        restore(w, f);
+        f->n_free = n_free;
+        if (n_free > 0)
+            memcpy(kf_B(f), w->B, n * (size_t)n_free * sizeof(double));
+        return false;
+    }
+    if (!reads_is_linear(reads) && n_free == 0)
+        iterate(w, f, &sight);
+    return true;
+}
+
+/* --- recovery -------------------------------------------------------------- */
+
+void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
+{
+    for (int i = 0; i < kind->n; i++)
+        w->b[i] = kind->state[i].is_constant ? 1 : 10;
+    ud_scale(kind->n, kf_ud(f), w->b);               /* P x 100           */
+}
+
+static const struct block *block_of(const struct rig_kind *kind, int state)
+{
+    int k = 0;
+    while (state >= kind->block[k].at + kind->block[k].n)
+        k++;
+    return &kind->block[k];
+}
+
+void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
+{
+    int n = kind->n, n_kept = 0;
+    double *P = w->W, *x = kf_x(f), *B = kf_B(f);
+    ud_covariance(n, kf_ud(f), P);
+    for (int k = 0; k < f->n_free; k++) {            /* constants not known */
+        bool is_kept = false;
+        for (int i = 0; i < n; i++) {
+            w->B[n * n_kept + i] = kind->state[i].is_constant ? B[n * k + i] : 0;
+            is_kept = is_kept || w->B[n * n_kept + i] != 0;
+        }
+        n_kept += is_kept;
+    }
+    for (int i = 0; i < n; i++) {
+        const struct block *b = block_of(kind, i);
+        if (kind->state[i].is_constant)
+            continue;
+        for (int j = 0; j < n; j++)
+            P[i * n + j] = P[j * n + i] = 0;
+        x[i] = 0;
+        if (b->model == BLOCK_GAUSS_MARKOV) {
+            x[i] = b->mean;
+            P[i * n + i] = b->q * b->tau_s / 2;
+        } else {
+            memset(w->B + n * n_kept, 0, (size_t)n * sizeof(double));
+            w->B[n * n_kept++ + i] = 1;
+        }
+    }
+    f->n_free = n_kept;
+    memcpy(B, w->B, (size_t)(n * n_kept) * sizeof(double));
+    /* A principal part of a covariance is one: this cannot fail. */
+    status st = ud_factor(n, P, kf_ud(f));
+    (void)st;
+}

@@ -1,0 +1,67 @@
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "core/model/rig.h"
+
+#include <string.h>
+
+#include "core/math/chi2.h"
+
+void rig_prepare(struct rig *rig)
+{
+    for (int i = 0; i < rig->n_sensors; i++) {
+        struct rig_sensor *s = &rig->sensor[i];
+        s->gate[0] = 0;
+        for (int m = 1; m <= READS_MAX; m++)
+            s->gate[m] = s->has_gate ? chi2_quantile(s->gate_p, m) : 0;
+    }
+}
+
+/* Order of `name` against the NUL-terminated `entry`. */
+static int compare(const char *name, size_t len, const char *entry)
+{
+    size_t n = strlen(entry);
+    int order = memcmp(name, entry, len < n ? len : n);
+    return order != 0 ? order : (len > n) - (len < n);
+}
+
+int rig_find_sensor(const struct rig *rig, const char *name, size_t len)
+{
+    int low = 0, high = rig->n_sensors - 1;
+    while (low <= high) {
+        int middle = (low + high) / 2;
+        int order = compare(name, len, rig->sensor[middle].name);
+        if (order == 0)
+            return middle;
+        if (order < 0)
+            high = middle - 1;
+        else
+            low = middle + 1;
+    }
+    return -1;
+}
+
+int rig_find_kind(const struct rig *rig, const char *id, size_t len)
+{
+    int best = -1;
+    size_t best_len = 0;
+    for (int i = 0; i < rig->n_kinds; i++) {
+        const struct rig_kind *k = &rig->kind[i];
+        size_t n = strlen(k->id);
+        if (!k->is_prefix && n == len && memcmp(id, k->id, n) == 0)
+            return i;
+        if (k->is_prefix && n <= len && memcmp(id, k->id, n) == 0 &&
+            (best < 0 || n > best_len)) {
+            best = i;
+            best_len = n;
+        }
+    }
+    return best;
+}
+
+int rig_pending_quota(const struct rig *rig, const struct rig_sensor *s)
+{
+    if (rig->max_pending > 0)
+        return rig->max_pending;
+    double window_s = (double)(rig->horizon_ns + rig->ahead_ns) * 1e-9;
+    double quota = 4 * s->rate_hz * window_s + 16;
+    return quota < 1e6 ? (int)quota : 1000000;
+}
