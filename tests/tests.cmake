@@ -8,7 +8,7 @@ function(check_tests folder)
   file(GLOB files CONFIGURE_DEPENDS tests/${folder}/test_*.c)
   foreach(file ${files})
     get_filename_component(name ${file} NAME_WE)
-    add_executable(${name} ${file} tests/main.c)
+    add_executable(${name} ${file} tests/main.c tests/support/drive.c)
     target_link_libraries(${name} PRIVATE toollib PkgConfig::CHECK ${MSGPACKC})
     target_compile_definitions(${name} PRIVATE
       TOOL_PATH="$<TARGET_FILE:ropewalk>" DAEMON_PATH="$<TARGET_FILE:ropewalkd>")
@@ -22,6 +22,9 @@ endfunction()
 check_tests(unit)
 check_tests(checks)
 check_tests(system)
+if(TARGET test_pcap)
+  target_link_libraries(test_pcap PRIVATE pcap)
+endif()
 
 file(GLOB bench_files CONFIGURE_DEPENDS tests/bench/bench_*.c)
 foreach(file ${bench_files})
@@ -30,3 +33,44 @@ foreach(file ${bench_files})
   target_link_libraries(${name} PRIVATE toollib)
   target_compile_options(${name} PRIVATE -O3)
 endforeach()
+
+# The counting shim of test_engine.
+target_link_options(test_engine PRIVATE
+  -Wl,--wrap=malloc -Wl,--wrap=calloc -Wl,--wrap=realloc)
+
+# Fuzz targets: with -DFUZZ=ON (clang) they look by themselves, otherwise each
+# is a test that goes through its corpus.
+option(FUZZ "Link fuzz targets with libFuzzer" OFF)
+file(GLOB fuzz_files CONFIGURE_DEPENDS tests/fuzz/fuzz_*.c)
+if(FUZZ)
+  foreach(lib math model filter engine wire run config)
+    target_compile_options(${lib} PRIVATE -fsanitize=fuzzer-no-link)
+  endforeach()
+endif()
+foreach(file ${fuzz_files})
+  get_filename_component(name ${file} NAME_WE)
+  string(REPLACE "fuzz_" "" short ${name})
+  if(FUZZ)
+    add_executable(${name} EXCLUDE_FROM_ALL ${file})
+    target_compile_options(${name} PRIVATE -fsanitize=fuzzer)
+    target_link_options(${name} PRIVATE -fsanitize=fuzzer)
+  else()
+    add_executable(${name} ${file} tests/fuzz/replay_main.c)
+    add_test(NAME fuzz.${short}
+             COMMAND ${name} tests/fuzz/corpus/${short}
+             WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
+  endif()
+  target_link_libraries(${name} PRIVATE toollib)
+endforeach()
+
+# Arrows between folders run one way; core calls nothing but memory and string
+# functions and sqrt.  A sanitizer adds symbols of its own.
+if(SANITIZE)
+  add_test(NAME style.layering COMMAND tests/layering.sh
+           WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
+else()
+  add_test(NAME style.layering COMMAND tests/layering.sh
+           $<TARGET_FILE:math> $<TARGET_FILE:model> $<TARGET_FILE:filter>
+           $<TARGET_FILE:engine>
+           WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
+endif()

@@ -2,6 +2,7 @@
 #include "core/engine/due.h"
 
 #include <stdbool.h>
+#include <string.h>
 
 void due_init(struct due *d, int n)
 {
@@ -14,7 +15,9 @@ void due_init(struct due *d, int n)
 
 static bool is_before(const struct due *d, int32_t a, int32_t b)
 {
-    return d->time[a] < d->time[b] || (d->time[a] == d->time[b] && a < b);
+    if (d->time[a] != d->time[b] || d->time[a] == DUE_NEVER)
+        return d->time[a] < d->time[b];
+    return strcmp(d->id[a], d->id[b]) < 0;
 }
 
 static void put(struct due *d, int i, int32_t place)

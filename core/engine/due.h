@@ -1,8 +1,8 @@
 /* due.h - which track has to be looked at next: a heap by due time.
  *
  * A track is due when a held measurement may go in or a laid one settles.
- * Equal times come out in order of the track's place, so that the order of
- * what is said never depends on history.
+ * Equal times come out in order of ids, so that the order of what is said
+ * never depends on which track was there first.
  */
 /* SPDX-License-Identifier: Apache-2.0 */
 #ifndef CORE_ENGINE_DUE_H
@@ -17,9 +17,11 @@ struct due {
     int32_t *heap;   /* places, the earliest first                        */
     int32_t *at;     /* by place: its position in the heap                */
     int64_t *time;   /* by place: when it is due                          */
+    const char **id; /* by place: the track's id, for equal times         */
 };
 
-/* All n places, never due.  The arrays hold n values each. */
+/* All n places, never due.  The arrays hold n values each; the caller fills
+ * `id`, and may change an id only while its place is never due. */
 void due_init(struct due *d, int n);
 
 void due_set(struct due *d, int place, int64_t time_ns);

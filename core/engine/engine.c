@@ -39,6 +39,7 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->touched = arena_take(arena, places * sizeof *e->touched);
     e->due.heap = arena_take(arena, places * sizeof *e->due.heap);
     e->due.at = arena_take(arena, places * sizeof *e->due.at);
+    e->due.id = arena_take(arena, places * sizeof *e->due.id);
     e->due.time = arena_take(arena, places * sizeof *e->due.time);
 }
 
@@ -74,7 +75,9 @@ struct engine *engine_init(void *memory, const struct rig *rig,
     lay_out(e, &arena, rig);
     e->rig = rig;
     e->sink = sink;
-    due_init(&e->due, e->roster.n_places > 0 ? e->roster.n_places : 1);
+    due_init(&e->due, e->roster.n_places);
+    for (int i = 0; i < e->roster.n_places; i++)
+        e->due.id[i] = e->roster.track[i].id;
     number_sensors(e);
     size_t bytes = sizeof *e->counts +
                    (size_t)rig->n_sensors * sizeof(struct ledger);
@@ -166,29 +169,37 @@ static void give_up(struct engine *e, struct track *t)
     roster_remove(&e->roster, t);
 }
 
-static void move_on(struct engine *e, struct track *t)
+/* Held measurements go in. */
+static void let_in(struct engine *e, struct track *t)
 {
     int n_before = t->is_touched ? t->n_laid_before : t->n_laid;
     t->is_touched = false;
-    if (t->is_confirmed) {
+    if (t->is_confirmed)
         release(e, t, n_before, e->now_ns - e->rig->hold_ns);
-        settle(e, t, e->now_ns - e->rig->horizon_ns);
-    } else if (t->n > 0 && track_step(t, 0)->t_ns + TRACK_CANDIDATE_NS <
-                               e->now_ns - e->rig->horizon_ns) {
+}
+
+/* The track that is due at due_ns, and nothing of it that is due later: steps
+ * of all tracks settle in one order, by t and id, whenever that happens. */
+static void move_on(struct engine *e, struct track *t, int64_t due_ns)
+{
+    let_in(e, t);
+    if (t->is_confirmed)
+        settle(e, t, due_ns - e->rig->horizon_ns);
+    else if (t->n > 0)
         give_up(e, t);
-    }
     intake_schedule(e, t);
 }
 
-static void run_due(struct engine *e)
+static void run_due(struct engine *e, int64_t until_ns)
 {
     if (e->roster.n_places == 0)
         return;
     for (;;) {
         int place = due_first(&e->due);
-        if (e->due.time[place] > e->now_ns)
+        int64_t due_ns = e->due.time[place];
+        if (due_ns > until_ns || due_ns == DUE_NEVER)
             break;
-        move_on(e, &e->roster.track[place]);
+        move_on(e, &e->roster.track[place], due_ns);
     }
 }
 
@@ -197,13 +208,16 @@ void engine_begin(struct engine *e, int64_t a_ns)
     e->now_ns = a_ns;
     e->n_touched = 0;
     e->refusal = NULL;
-    run_due(e);
+    run_due(e, a_ns);
 }
 
 void engine_end(struct engine *e)
 {
-    for (int i = 0; i < e->n_touched; i++)
-        move_on(e, &e->roster.track[e->touched[i]]);
+    for (int i = 0; i < e->n_touched; i++) {
+        struct track *t = &e->roster.track[e->touched[i]];
+        let_in(e, t);
+        intake_schedule(e, t);
+    }
     e->n_touched = 0;
 }
 
@@ -225,7 +239,7 @@ static void retire(struct engine *e, struct track *t)
 void engine_tick(struct engine *e, int64_t tick_ns)
 {
     e->now_ns = tick_ns;
-    run_due(e);
+    run_due(e, tick_ns);
     for (int i = 0; i < e->roster.n; i++) {
         struct track *t = &e->roster.track[e->roster.by_id[i]];
         if (t->is_confirmed)
@@ -250,9 +264,9 @@ void engine_finish(struct engine *e)
     for (int i = 0; i < e->roster.n; i++) {
         struct track *t = &e->roster.track[e->roster.by_id[i]];
         release(e, t, t->n_laid, INT64_MAX);
-        settle(e, t, INT64_MAX);
         intake_schedule(e, t);
     }
+    run_due(e, INT64_MAX);
 }
 
 void engine_reanchor(struct engine *e, int64_t line_ns)

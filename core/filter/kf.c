@@ -44,27 +44,58 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
 
 /* --- predict ------------------------------------------------------------- */
 
-/* W = Phi U, block rows only, and V = Qu filled with its zeros. */
-static void spread(const struct rig_kind *kind, const double *ud,
-                   struct kf_work *w)
+/* A body that is inlined with a constant n is unrolled by the compiler: same
+ * operations, same order, same bits, without the loops. */
+#define UNROLLED static inline __attribute__((always_inline))
+#define FOR_EACH_N(call)                                                       \
+    switch (n) {                                                               \
+    case 1:                                                                    \
+        call(1);                                                               \
+        break;                                                                 \
+    case 2:                                                                    \
+        call(2);                                                               \
+        break;                                                                 \
+    case 3:                                                                    \
+        call(3);                                                               \
+        break;                                                                 \
+    case 4:                                                                    \
+        call(4);                                                               \
+        break;                                                                 \
+    case 6:                                                                    \
+        call(6);                                                               \
+        break;                                                                 \
+    default:                                                                   \
+        call(n);                                                               \
+    }
+
+/* W = Phi U and V = Qu, both upper triangular; below the diagonal nothing is
+ * written or read. */
+UNROLLED void spread_body(const int n, const struct rig_kind *kind,
+                          const double *ud, struct kf_work *w)
 {
-    int n = kind->n;
     double *V = w->W + n * n;
-    memset(w->W, 0, 2 * (size_t)(n * n) * sizeof(double));
     for (int k = 0; k < kind->n_blocks; k++) {
         int at = kind->block[k].at, end = at + kind->block[k].n;
         for (int i = at; i < end; i++) {
             const double *Phi = w->Phi + i * n;
-            double *Wi = w->W + i * n;
-            for (int c = i; c < end; c++) {
-                double phi = Phi[c];
-                Wi[c] += phi;
-                for (int j = c + 1; j < n; j++)
-                    Wi[j] += phi * ud[UD_AT(c, j)];  /* W = Phi U         */
-                V[i * n + c] = w->Qu[i * n + c];
+            for (int j = i; j < n; j++) {
+                double sum = j < end ? Phi[j] : 0;
+                for (int c = i; c < end && c < j; c++)
+                    sum += Phi[c] * ud[UD_AT(c, j)];
+                w->W[i * n + j] = sum;               /* W = Phi U         */
+                V[i * n + j] = j < end ? w->Qu[i * n + j] : 0;
             }
         }
     }
+}
+
+static void spread(const struct rig_kind *kind, const double *ud,
+                   struct kf_work *w)
+{
+    int n = kind->n;
+#define CALL(n) spread_body(n, kind, ud, w)
+    FOR_EACH_N(CALL)
+#undef CALL
 }
 
 static void move_free(const struct rig_kind *kind, struct kf_work *w,
@@ -314,13 +345,62 @@ double kf_loglik(const struct kf_seen *seen)
     return -sum / 2;                                 /* log N(y; 0, S)    */
 }
 
+/* One linear component and nothing undetermined: the gate is decided before
+ * anything is touched, so nothing has to be kept. */
+UNROLLED bool scalar_body(const int n, struct kf_work *w, struct kf *f,
+                          const struct sight *s, const double *gate,
+                          struct kf_seen *seen)
+{
+    const struct reads_row *row = &s->reads->row[0];
+    double h[UD_MAX], b[UD_MAX], *x = f->v, at = 0;
+    for (int k = 0; k < n; k++)
+        h[k] = 0;
+    for (int k = 0; k < row->n_terms; k++) {
+        h[row->term[k].state] += row->term[k].value;
+        at += row->term[k].value * x[row->term[k].state];
+    }
+    double y = s->z[0] - at, *ud = f->v + n;         /* y = z - H x       */
+    double S = ud_innovation_variance(n, ud, h, s->r[0]);
+    seen->y[0] = y;
+    seen->n_determined = 0;
+    seen->dof = S > 0;
+    seen->s[0] = S;
+    seen->nis = S > 0 ? y * y / S : 0;               /* y' S^-1 y         */
+    if (gate && S > 0 && !(seen->nis <= gate[1]))
+        return false;
+    if (S > 0) {
+        ud_update(n, ud, h, s->r[0], b);
+        double gain = y / S;
+        for (int k = 0; k < n; k++)
+            x[k] += b[k] * gain;                     /* x = x + K y       */
+    }
+    (void)w;
+    return true;
+}
+
+static bool update_scalar(struct kf_work *w, struct kf *f,
+                          const struct sight *s, const double *gate,
+                          struct kf_seen *seen)
+{
+    int n = f->n;
+    bool is_used = false;
+#define CALL(n) is_used = scalar_body(n, w, f, s, gate, seen)
+    FOR_EACH_N(CALL)
+#undef CALL
+    return is_used;
+}
+
 bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
                const struct reads *reads, const double *z, const double *r,
                const double *gate, struct kf_seen *seen)
 {
     size_t n = (size_t)kind->n;
     int n_free = f->n_free;
+    bool is_linear = reads_is_linear(reads);
     struct sight sight = {reads, z, r};
+    if (is_linear && reads->m == 1 && n_free == 0 && z[0] == z[0])
+        return update_scalar(w, f, &sight, gate, seen);
+
     memcpy(w->start, kf_x(f), n * sizeof(double));
     memcpy(w->x, kf_x(f), n * sizeof(double));
     memcpy(w->ud, kf_ud(f), UD_SIZE(n) * sizeof(double));
@@ -335,7 +415,7 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
             memcpy(kf_B(f), w->B, n * (size_t)n_free * sizeof(double));
         return false;
     }
-    if (!reads_is_linear(reads) && n_free == 0)
+    if (!is_linear && n_free == 0)
         iterate(w, f, &sight);
     return true;
 }

@@ -6,11 +6,12 @@
 #ifndef CORE_MATH_CHI2_H
 #define CORE_MATH_CHI2_H
 
-/* P(X <= x), dof > 0; 0 for x <= 0.  Relative error below 1e-11. */
+/* P(X <= x), 0 < dof <= 1e10 (else NaN); 0 for x <= 0.  Relative error below
+ * 1e-11; the work grows like the square root of dof. */
 double chi2_cdf(double x, double dof);
 
-/* The x with P(X <= x) = p, 0 < p < 1, dof > 0.  Relative error below 1e-10;
- * NaN outside. */
+/* The x with P(X <= x) = p, 0 < p < 1, 0 < dof <= 1e10.  Relative error below
+ * 1e-10; NaN outside. */
 double chi2_quantile(double p, double dof);
 
 /* ln Gamma(x) for x > 0, 1e-13 relative (absolute near its zeros 1 and 2). */

@@ -106,7 +106,7 @@ double ud_update(int n, double *ud, const double *h, double r, double *b)
     }
 }
 
-double ud_innovation_variance(int n, const double *ud, const double *h,
+UNROLLED double variance_body(const int n, const double *ud, const double *h,
                               double r)
 {
     double alpha = r;
@@ -119,6 +119,25 @@ double ud_innovation_variance(int n, const double *ud, const double *h,
         col += j + 1;
     }
     return alpha;
+}
+
+double ud_innovation_variance(int n, const double *ud, const double *h,
+                              double r)
+{
+    switch (n) {
+    case 1:
+        return variance_body(1, ud, h, r);
+    case 2:
+        return variance_body(2, ud, h, r);
+    case 3:
+        return variance_body(3, ud, h, r);
+    case 4:
+        return variance_body(4, ud, h, r);
+    case 6:
+        return variance_body(6, ud, h, r);
+    default:
+        return variance_body(n, ud, h, r);
+    }
 }
 
 void ud_gram_schmidt(int n, int k, double *W, const double *w, double *ud)

@@ -2,7 +2,8 @@
  *
  * Numbers print as the shortest text that reads back as the same double.
  * Never NaN or Inf: what is not a number yet is null.  The key order is
- * fixed, so equal messages give equal bytes.
+ * fixed, so equal messages give equal bytes.  Times are RFC 3339 text in JSON
+ * and timestamps (extension -1) in MessagePack.
  *
  * Every function writes whole messages only.  It returns the length, without
  * a terminator, or 0 when `size` does not suffice; JSON ends in '\n'.
@@ -19,7 +20,11 @@ enum { ENGINE_NUMBER = 1 };
 
 enum wire_form { WIRE_JSON, WIRE_MSGPACK };
 
-/* Enough for any one message of this rig in either form. */
+enum { WIRE_TEXT_MAX = 1000 };
+
+/* Enough for any one message of this rig in either form, and for any one
+ * piece of a summary; a build, reason, word or sentence handed in may have
+ * up to WIRE_TEXT_MAX bytes. */
 size_t wire_message_bound(const struct rig *rig);
 
 /* An estimate, event or counts message. */
