@@ -8,7 +8,8 @@ function(check_tests folder)
   file(GLOB files CONFIGURE_DEPENDS tests/${folder}/test_*.c)
   foreach(file ${files})
     get_filename_component(name ${file} NAME_WE)
-    add_executable(${name} ${file} tests/main.c tests/support/drive.c)
+    add_executable(${name} ${file} tests/main.c tests/support/drive.c
+                   tests/support/tool.c)
     target_link_libraries(${name} PRIVATE toollib PkgConfig::CHECK ${MSGPACKC})
     target_compile_definitions(${name} PRIVATE
       TOOL_PATH="$<TARGET_FILE:ropewalk>" DAEMON_PATH="$<TARGET_FILE:ropewalkd>")

@@ -17,29 +17,29 @@
 
 enum exit_code {
     EXIT_FINE = 0,
-    EXIT_PROBLEM = 1,      /* the check found a problem, the run was not good */
+    EXIT_PROBLEM = 1, /* the check found a problem, the run was not good */
     EXIT_WRONG_USE = 64,
-    EXIT_NOT_THERE = 69,   /* daemon not running, file not found           */
+    EXIT_NOT_THERE = 69, /* daemon not running, file not found           */
     EXIT_BAD_SETTINGS = 78
 };
 
 struct option_row {
-    const char *name;      /* "seed"; NULL ends the table                  */
-    const char *argument;  /* "N", or NULL for a flag                      */
-    const char *help;      /* one sentence                                 */
-    bool repeats;          /* may be given more than once                  */
+    const char *name;     /* "seed"; NULL ends the table                  */
+    const char *argument; /* "N", or NULL for a flag                      */
+    const char *help;     /* one sentence                                 */
+    bool repeats;         /* may be given more than once                  */
 };
 
 struct call;
 
 struct verb {
     const char *name;
-    const char *summary;   /* "lays a capture through the engine again"    */
-    const char *arguments; /* "RIG.json CAPTURE..."                        */
+    const char *summary;    /* "lays a capture through the engine again"    */
+    const char *arguments;  /* "RIG.json CAPTURE..."                        */
     int min_args, max_args; /* max -1: any number                          */
-    const char *text;      /* paragraphs for --help and the man page       */
-    const char *examples;  /* lines, each "command   # what it does"       */
-    bool takes_rig;        /* adds --set and --without, shared by all      */
+    const char *text;       /* paragraphs for --help and the man page       */
+    const char *examples;   /* lines, each "command   # what it does"       */
+    bool takes_rig;         /* adds --set and --without, shared by all      */
     const struct option_row *options;
     int (*run)(const struct call *call);
 };

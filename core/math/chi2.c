@@ -36,7 +36,7 @@ double chi2_ln_gamma(double x)
         return x;
     double product = 1;
     for (; x < 10; x += 1)
-        product *= x;                 /* Gamma(x) = Gamma(x + n) / product */
+        product *= x; /* Gamma(x) = Gamma(x + n) / product */
     return (x - 0.5) * (real_log(x) - 1) + (0.5 * REAL_LN_2PI - 0.5) +
            stirling_rest(x) - real_log(product);
 }
@@ -165,7 +165,7 @@ double chi2_quantile(double p, double dof)
         double y = real_exp(t), tail = ln_tail(a, y, upper);
         double slope = real_exp(ln_density(a, y) - tail);
         double step = (target - tail) / (upper ? -slope : slope);
-        if (!(real_abs(step) < 2))    /* also when the slope is 0          */
+        if (!(real_abs(step) < 2)) /* also when the slope is 0          */
             step = (target > tail) != upper ? 2 : -2;
         t += step;
         if (real_abs(step) < 1e-12)

@@ -48,7 +48,7 @@ double random_uniform(struct random *r)
 
 uint64_t random_below(struct random *r, uint64_t n)
 {
-    uint64_t surplus = (0 - n) % n, bits;        /* 2^64 mod n            */
+    uint64_t surplus = (0 - n) % n, bits; /* 2^64 mod n            */
     do
         bits = random_bits(r);
     while (bits < surplus);
@@ -74,5 +74,5 @@ double random_normal(struct random *r)
 
 double random_exponential(struct random *r)
 {
-    return 0 - real_log(1 - random_uniform(r));  /* 1 - u in (0, 1]       */
+    return 0 - real_log(1 - random_uniform(r)); /* 1 - u in (0, 1]       */
 }

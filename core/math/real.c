@@ -132,9 +132,9 @@ double real_expm1(double x)
     double r = high - low, c = (high - r) - low;
     double half = 0.5 * r, s = r * half, ss = s * s;
     double Q = 1 + s * -3.33333333333331316428e-02;
-    Q += ss * (1.58730158725481460165e-03 + s * -7.93650757867487942473e-05 +
-               ss * (4.00821782732936239552e-06 +
-                     s * -2.01099218183624371326e-07));
+    Q += ss *
+         (1.58730158725481460165e-03 + s * -7.93650757867487942473e-05 +
+          ss * (4.00821782732936239552e-06 + s * -2.01099218183624371326e-07));
     double t = 3 - Q * half;
     double e = s * ((Q - t) / (6 - r * t));
     if (k == 0)
@@ -161,9 +161,9 @@ double real_log(double x)
     k += (int)((int64_t)above >> 52);
     double f = of_bits((above & 0xfffffffffffff) + root_half) - 1;
     double half = 0.5 * f * f, s = f / (2 + f), z = s * s, w = z * z;
-    double even = w * (3.999999999940941908e-01 +
-                       w * (2.222219843214978396e-01 +
-                            w * 1.531383769920937332e-01));
+    double even =
+        w * (3.999999999940941908e-01 +
+             w * (2.222219843214978396e-01 + w * 1.531383769920937332e-01));
     double odd = 6.666666666666735130e-01 + w * 2.857142874366239149e-01;
     odd += w * w * (1.818357216161805012e-01 + w * 1.479819860511658591e-01);
     double R = even + z * odd, n = k;
@@ -174,9 +174,9 @@ double real_log(double x)
 static double sin_near(double x, double y)
 {
     double z = x * x, w = z * z, v = z * x;
-    double r = 8.33333333332248946124e-03 +
-               z * (-1.98412698298579493134e-04 +
-                    z * 2.75573137070700676789e-06);
+    double r =
+        8.33333333332248946124e-03 +
+        z * (-1.98412698298579493134e-04 + z * 2.75573137070700676789e-06);
     r += z * w * (-2.50507602534068634195e-08 + z * 1.58969099521155010221e-10);
     return x - ((z * (0.5 * y - v * r) - y) - v * -1.66666666666666324348e-01);
 }
@@ -185,12 +185,12 @@ static double sin_near(double x, double y)
 static double cos_near(double x, double y)
 {
     double z = x * x, w = z * z;
-    double r = z * (4.16666666666666019037e-02 +
-                    z * (-1.38888888888741095749e-03 +
-                         z * 2.48015872894767294178e-05));
-    r += w * w * (-2.75573143513906633035e-07 +
-                  z * (2.08757232129817482790e-09 +
-                       z * -1.13596475577881948265e-11));
+    double r =
+        z * (4.16666666666666019037e-02 + z * (-1.38888888888741095749e-03 +
+                                               z * 2.48015872894767294178e-05));
+    r += w * w *
+         (-2.75573143513906633035e-07 +
+          z * (2.08757232129817482790e-09 + z * -1.13596475577881948265e-11));
     double half = 0.5 * z, main = 1 - half;
     return main + (((1 - main) - half) + (z * r - x * y));
 }
@@ -212,9 +212,9 @@ static void reduce(double x, double n, double *high, double *low)
     if (real_abs(y) > 0x1p-8)
         return;
     double b = n * 0x1.84698p-48, s = r - b, t = s - r;
-    double error = (r - (s - t)) - (b + t);      /* r - b = s + error     */
+    double error = (r - (s - t)) - (b + t); /* r - b = s + error     */
     double c = n * 0x1.3198ap-69, u = s - c, v = u - s;
-    error += (s - (u - v)) - (c + v);            /* s - c = u + error     */
+    error += (s - (u - v)) - (c + v); /* s - c = u + error     */
     error -= n * 0x1.701b839a25205p-92;
     *high = u + error;
     *low = (u - *high) + error;
@@ -288,19 +288,19 @@ static double atan_of(double y, double x, double *low)
         return t;
     }
     if (y < 0.6875 * x) {
-        t = (2 * y - x) / (2 * x + y);           /* from atan(1/2)        */
+        t = (2 * y - x) / (2 * x + y); /* from atan(1/2)        */
         base = 0x1.dac670561bb4fp-2;
         base_low = 0x1.a2b7f222f65e2p-56;
     } else if (y < 1.1875 * x) {
-        t = (y - x) / (x + y);                   /* from atan(1)          */
+        t = (y - x) / (x + y); /* from atan(1)          */
         base = half_pi / 2;
         base_low = half_pi_low / 2;
     } else if (y < 2.4375 * x) {
-        t = (y - 1.5 * x) / (x + 1.5 * y);       /* from atan(3/2)        */
+        t = (y - 1.5 * x) / (x + 1.5 * y); /* from atan(3/2)        */
         base = 0x1.f730bd281f69bp-1;
         base_low = 0x1.007887af0cbbdp-56;
     } else {
-        t = -x / y;                              /* from atan(inf)        */
+        t = -x / y; /* from atan(inf)        */
         base = half_pi;
         base_low = half_pi_low;
     }
@@ -349,17 +349,16 @@ double real_wrap(double x)
 {
     if (!real_is_finite(x))
         return real_nan();
-    while (real_abs(x) > angle_max) {            /* exact, x mod fl(2 pi) */
+    /* Modulo the double 2 pi; exact, as half_pi has only 50 bits. */
+    while (real_abs(x) > angle_max) {
         int k = (int)(bits_of(x) >> 52 & 0x7ff) - 1023;
         double step = half_pi * power_of_two(k - 1);
-        if (real_abs(x) >= 2 * step)
-            step *= 2;
         x = x > 0 ? x - step : x + step;
     }
     double n = nearest(x * 0x1.45f306dc9c883p-3), low;
     if (n != 0) {
         double was = x;
-        reduce(was, 4 * n, &x, &low);            /* x - 2 pi n            */
+        reduce(was, 4 * n, &x, &low); /* x - 2 pi n            */
         if (x > REAL_PI)
             reduce(was, 4 * (n + 1), &x, &low);
         else if (x <= -REAL_PI)

@@ -36,13 +36,16 @@ double real_log(double x);
 double real_sin(double x);
 double real_cos(double x);
 
-/* The angle of (x, y) in (-pi, pi]; atan2(0, 0) = 0. */
+/* The angle of (x, y) in (-pi, pi]; atan2(0, 0) = 0.  A zero's sign is not
+ * looked at; infinities give the limits along the axes or diagonals. */
 double real_atan2(double y, double x);
 
-/* The same angle in (-pi, pi]; finite x only. */
+/* The same angle in (-REAL_PI, REAL_PI]; what rounds to -pi becomes pi.  Beyond
+ * 1e9, where an angle has no meaning left, still in range, but modulo the
+ * double nearest to 2 pi.  NaN for NaN and inf. */
 double real_wrap(double x);
 
-/* x^p for whole p >= 0. */
+/* x^p for whole p >= 0; within p ulp. */
 double real_pow_int(double x, int p);
 
 #endif

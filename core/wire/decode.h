@@ -32,7 +32,7 @@ struct wire_decoder {
     const char *reason;       /* why the datagram or the first bad element
                                  was refused, with the remedy; NULL if none */
     int at;                   /* byte offset that the reason belongs to   */
-    struct measurement element[WIRE_ELEMENTS_MAX];
+    struct measurement element[WIRE_ELEMENTS_MAX + 1]; /* one to work on  */
     char scratch[WIRE_SCRATCH_SIZE];
     int scratch_used;
 };

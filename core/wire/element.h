@@ -1,0 +1,55 @@
+/* element.h - one element of a datagram, whatever its encoding.
+ *
+ * Both decoders turn a key and its value into element_set; what a key means
+ * and what it may hold stands here once.  The first thing that is wrong with
+ * an element is kept as its reason.
+ */
+/* SPDX-License-Identifier: Apache-2.0 */
+#ifndef CORE_WIRE_ELEMENT_H
+#define CORE_WIRE_ELEMENT_H
+
+#include <stddef.h>
+
+#include "core/model/message.h"
+
+enum value_kind {
+    VALUE_NULL,
+    VALUE_BOOL,
+    VALUE_INT,    /* i                                                     */
+    VALUE_UINT,   /* u, above what an int64 holds                          */
+    VALUE_DOUBLE, /* d                                                     */
+    VALUE_FLOAT,  /* d, came as 32 bits                                    */
+    VALUE_TEXT,   /* text                                                  */
+    VALUE_TIME,   /* i: ns since 1970                                      */
+    VALUE_LIST,   /* n numbers or nulls, the first READS_MAX in list       */
+    VALUE_OTHER   /* a map, bytes, a list of something else                */
+};
+
+struct value {
+    enum value_kind kind;
+    int64_t i;
+    uint64_t u;
+    double d;
+    struct text text;
+    int n;
+    double list[READS_MAX];
+};
+
+struct element {
+    struct measurement *m;   /* where it is put together                   */
+    uint32_t seen;           /* bit per key                                */
+    bool is_wrong_version;
+    const char *reason;      /* NULL while all is well                     */
+};
+
+void element_begin(struct element *e, struct measurement *m);
+void element_set(struct element *e, const struct text *key,
+                 const struct value *v);
+
+/* Checks the whole; false with e->reason when it is no measurement. */
+bool element_end(struct element *e);
+
+/* The value as a number, NaN for null; false for anything else. */
+bool value_number(const struct value *v, double *number);
+
+#endif

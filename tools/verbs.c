@@ -1,0 +1,19 @@
+/* The list of verbs, in the order of --help: before, during, after a run. */
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "tools/call.h"
+
+#include <stddef.h>
+
+extern const struct verb verb_demo, verb_check, verb_rehearse, verb_send,
+    verb_follow, verb_import, verb_replay, verb_help;
+
+const struct verb *const verb_list[] = {
+#if __has_include("tools/verb_demo.c")
+    &verb_demo,
+#endif
+    &verb_check,
+#if __has_include("tools/verb_rehearse.c")
+    &verb_rehearse,
+#endif
+    &verb_send,     &verb_follow, &verb_import, &verb_replay, &verb_help, NULL,
+};
