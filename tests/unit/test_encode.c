@@ -57,6 +57,15 @@ START_TEST(undetermined_states_are_null_in_x_u_and_their_part_of_P)
 }
 END_TEST
 
+START_TEST(an_undetermined_first_state_is_null_in_its_column_too)
+{
+    some_estimate()->undetermined = 1 << 0;
+    check_message(NULL);
+    ck_assert_ptr_nonnull(strstr(line, "\"x\":[null,-0.25],\"u\":[null,2],"
+                                       "\"P\":[null,null,4],"));
+}
+END_TEST
+
 START_TEST(what_is_not_finite_is_null_never_nan)
 {
     struct estimate *e = some_estimate();
@@ -309,6 +318,7 @@ Suite *suite(void)
     tcase_add_test(t, a_live_estimate_has_all_keys_in_order);
     tcase_add_test(t, a_settled_estimate_carries_nothing_of_arrival);
     tcase_add_test(t, undetermined_states_are_null_in_x_u_and_their_part_of_P);
+    tcase_add_test(t, an_undetermined_first_state_is_null_in_its_column_too);
     tcase_add_test(t, what_is_not_finite_is_null_never_nan);
     tcase_add_test(t, times_before_1970_are_the_same_in_both_forms);
     tcase_add_test(t, counts_of_every_size_are_the_same_in_both_forms);

@@ -36,31 +36,38 @@ START_TEST(a_message_that_does_not_fit_is_not_written_past_the_end)
 }
 END_TEST
 
-/* The worst that fits into the structs: all names full of control bytes. */
-static void set_up_largest(int n_kinds, int n_sensors)
+/* n control bytes, or as many as fit: each is six characters in JSON. */
+static void fill_name(char *name, size_t size, size_t n)
+{
+    memset(name, 1, n < size ? n : size - 1);
+}
+
+/* The worst that fits into the structs with names of this length. */
+static void set_up_largest(int n_kinds, int n_sensors, size_t n)
 {
     memset(&rig, 0, sizeof rig);
     memset(&m, 0, sizeof m);
-    memset(rig.name, 1, sizeof rig.name - 1);
-    memset(rig.file_hash, 1, sizeof rig.file_hash - 1);
+    fill_name(rig.name, sizeof rig.name, n);
+    fill_name(rig.file_hash, sizeof rig.file_hash, n);
     rig.n_kinds = n_kinds;
     rig.n_sensors = n_sensors;
     for (int k = 0; k < n_kinds; k++) {
         struct rig_kind *kind = &rig.kind[k];
-        memset(kind->id, 1, sizeof kind->id - 1);
+        fill_name(kind->id, sizeof kind->id, n);
         kind->is_prefix = true;
         kind->n = RIG_STATES_MAX;
         for (int i = 0; i < kind->n; i++) {
-            memset(kind->state[i].name, 1, RIG_ID_SIZE - 1);
-            memset(kind->state[i].unit, 1, RIG_UNIT_SIZE - 1);
+            fill_name(kind->state[i].name, RIG_ID_SIZE, n);
+            fill_name(kind->state[i].unit, RIG_UNIT_SIZE, n);
         }
+        fill_name(kind->state[0].name, RIG_ID_SIZE, RIG_ID_SIZE);
     }
     for (int k = 0; k < n_sensors; k++) {
         struct rig_sensor *sensor = &rig.sensor[k];
-        memset(sensor->name, 1, RIG_ID_SIZE - 1);
+        fill_name(sensor->name, RIG_ID_SIZE, n);
         sensor->reads.m = READS_MAX;
         for (int i = 0; i < READS_MAX; i++)
-            memset(sensor->unit[i], 1, RIG_UNIT_SIZE - 1);
+            fill_name(sensor->unit[i], RIG_UNIT_SIZE, n);
     }
 }
 
@@ -71,7 +78,16 @@ static void fill_reasons(struct reason *why, uint8_t *n_why)
         why[i] = (struct reason){REASON_UNDETERMINED, 0};
 }
 
-/* Every number prints with 25 characters; undetermined stays 0. */
+/* P_ij = a_i a_j d with both signs: about 1e-6, where texts are longest. */
+static void fill_longest_covariance(double *ud)
+{
+    int last = RIG_STATES_MAX - 1;
+    memset(ud, 0, UD_SIZE(RIG_STATES_MAX) * sizeof *ud);
+    for (int i = 0; i < last; i++)
+        ud[UD_AT(i, last)] = (i % 2 == 0 ? -1 : 1) * (1 + i / 3000.0);
+    ud[UD_AT(last, last)] = 2.3456789012345678e-6;
+}
+
 static void fill_largest_estimate(void)
 {
     const double longest = -1.2345678901234567e-6;
@@ -90,11 +106,7 @@ static void fill_largest_estimate(void)
     e->n_states = RIG_STATES_MAX;
     for (int i = 0; i < RIG_STATES_MAX; i++)
         e->v[i] = longest;
-    double *ud = e->v + RIG_STATES_MAX;
-    for (int j = 0; j < RIG_STATES_MAX; j++) {
-        for (int i = 0; i <= j; i++)
-            ud[UD_AT(i, j)] = i == j ? 1.2345678901234567e-6 : 0.1 / 3;
-    }
+    fill_longest_covariance(e->v + RIG_STATES_MAX);
 }
 
 static void fill_largest_event(void)
@@ -120,9 +132,17 @@ static void fill_largest_counts(void)
     memset(c->sensor, 0xff, c->n_sensors * sizeof *c->sensor);
 }
 
+/* The last two: an estimate, then counts, is the largest of all. */
 static const struct {
     int n_kinds, n_sensors;
-} sizes[] = {{1, 1}, {1, 0}, {RIG_KINDS_MAX, RIG_SENSORS_MAX}, {1, 256}};
+    size_t name_len;
+} sizes[] = {
+    {1, 1, RIG_ID_SIZE},
+    {1, 0, RIG_ID_SIZE},
+    {RIG_KINDS_MAX, RIG_SENSORS_MAX, RIG_ID_SIZE},
+    {1, 0, 0},
+    {1, RIG_SENSORS_MAX, 0},
+};
 
 static void check_largest_pieces(size_t bound)
 {
@@ -150,7 +170,7 @@ static void check_largest_pieces(size_t bound)
 
 START_TEST(the_bound_holds_the_largest_message_of_each_type)
 {
-    set_up_largest(sizes[_i].n_kinds, sizes[_i].n_sensors);
+    set_up_largest(sizes[_i].n_kinds, sizes[_i].n_sensors, sizes[_i].name_len);
     size_t bound = wire_message_bound(&rig);
     ck_assert_uint_lt(bound, sizeof line);
     fill_largest_estimate();

@@ -322,6 +322,24 @@ START_TEST(what_is_no_datagram_of_ours_is_skipped)
 }
 END_TEST
 
+/* Lengths that lead out of their header, with bytes there that would pass. */
+START_TEST(lengths_inside_headers_are_not_believed)
+{
+    uint8_t record[RECORD_MAX];
+    struct pcap_record r;
+    size_t used;
+    size_t n = write_record(record, &from_4, &to_4, rfc1071, 8);
+    record[16] = 0x40; /* a header of no words ...                        */
+    record[21] = 16;   /* ... where a UDP length would stand              */
+    ck_assert_int_eq(pcap_read_record(&ours, record, n, &r, &used), PCAP_SKIP);
+    n = write_record(record, &from_6, &to_6, rfc1071, 8);
+    record[22] = 60; /* options of 8 * 255 + 8 bytes, then UDP            */
+    record[56] = 17;
+    record[57] = 255;
+    ck_assert_int_eq(pcap_read_record(&ours, record, n, &r, &used), PCAP_SKIP);
+}
+END_TEST
+
 START_TEST(options_before_udp_are_stepped_over)
 {
     uint8_t record[RECORD_MAX];
@@ -446,6 +464,7 @@ Suite *suite(void)
     tcase_add_test(t, a_tail_of_zeros_is_torn_not_a_row_of_records);
     tcase_add_loop_test(t, what_is_no_datagram_of_ours_is_skipped, 0,
                         COUNT(changes));
+    tcase_add_test(t, lengths_inside_headers_are_not_believed);
     tcase_add_test(t, options_before_udp_are_stepped_over);
     tcase_add_test(t, padding_after_the_packet_is_no_payload);
     tcase_add_test(t, another_link_type_is_skipped_whole);

@@ -1,0 +1,215 @@
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "daemon/ingest.h"
+
+#include <inttypes.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+
+#include "daemon/log.h"
+
+#define SECOND_NS 1000000000
+
+/* An empty socket says that time has come to the reading, less this: a stamp
+ * of another processor may lie a little back. */
+#define EMPTY_MARGIN_NS 5000000
+
+enum { LOOK_MS = 10, RUN_ALIGN = 64 };
+
+struct ingest {
+    const struct settings *settings;
+    struct hub *hub;
+    struct recorder *recorder;
+    struct run *run;
+    void *memory;
+    struct receive *receive;
+    struct sender own;           /* our address, for the capture           */
+    uv_timer_t timer;
+    struct line line;
+    int64_t advanced_ns;         /* line that time is known to have reached */
+    int64_t recorded_ns;         /* line of the last record                */
+    int64_t told_ns;             /* monotonic, of the last look at drops   */
+    uint64_t n_dropped;
+    struct log_site refusals, drops, full;
+};
+
+/* --- what comes in -------------------------------------------------------------- */
+
+static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
+                        const struct sender *from, const uint8_t *bytes,
+                        size_t len)
+{
+    struct ingest *in = ctx;
+    int64_t a_ns =
+        run_arrival(in->run, line_arrival(&in->line, now, stamp_ns));
+    if (in->recorder &&
+        !recorder_put(in->recorder, a_ns, from, &in->own, bytes, len))
+        log_often(&in->full, "the capture lags behind: records left out");
+    in->recorded_ns = in->advanced_ns = a_ns;
+    run_feed(in->run, a_ns, from, bytes, len);
+    const char *why = run_last_refusal(in->run);
+    if (why)
+        log_often(&in->refusals, "refused: %s; its first bytes: %.*s", why,
+                  (int)(len < 60 ? len : 60),
+                  len > 0 && (bytes[0] == '{' || bytes[0] == '[')
+                      ? (const char *)bytes
+                      : "(MessagePack)");
+}
+
+static void on_empty(void *ctx, struct line_reading now)
+{
+    struct ingest *in = ctx;
+    int64_t reached_ns = line_now(&in->line, now) - EMPTY_MARGIN_NS;
+    if (reached_ns <= in->advanced_ns)
+        return;
+    in->advanced_ns = reached_ns;
+    run_advance(in->run, reached_ns);
+    if (in->recorder && reached_ns - in->recorded_ns >= SECOND_NS) {
+        recorder_control(in->recorder, CONTROL_TIME, reached_ns, 0, "");
+        in->recorded_ns = reached_ns;
+    }
+}
+
+static void say(void *ctx, const struct message *m)
+{
+    struct ingest *in = ctx;
+    hub_say(in->hub, m);
+}
+
+/* --- what only the host knows ------------------------------------------------------ */
+
+static void look_at_drops(struct ingest *in)
+{
+    struct receive_counts c = receive_counts(in->receive);
+    uint64_t n = c.n_dropped - in->n_dropped;
+    if (n == 0)
+        return;
+    in->n_dropped = c.n_dropped;
+    log_often(&in->drops,
+              "%" PRIu64 " datagrams dropped by the kernel: receive.buffer is "
+              "full; raise it, or the system's rmem_max",
+              n);
+    hub_host(in->hub, "drops", "dropped by the kernel: receive.buffer is full",
+             n);
+    if (in->recorder)
+        recorder_control(in->recorder, CONTROL_DROPS, in->advanced_ns, n,
+                         "receive buffer full");
+}
+
+static void look_at_clock(struct ingest *in)
+{
+    struct line_reading now = line_read();
+    if (!line_is_stepped(&in->line, now))
+        return;
+    char text[160];
+    snprintf(text, sizeof text,
+             "the host's clock was stepped by %.3f s: the arrival line begins "
+             "anew, tracks restart",
+             (double)(now.real_ns - line_now(&in->line, now)) * 1e-9);
+    log_warn("%s", text);
+    hub_host(in->hub, "clock", text, 0);
+    if (in->recorder) {
+        recorder_control(in->recorder, CONTROL_TIME, in->advanced_ns, 0, "");
+        recorder_control(in->recorder, CONTROL_REANCHOR, now.real_ns, 0, text);
+    }
+    line_start(&in->line, now);
+    run_reanchor(in->run, now.real_ns);
+    in->advanced_ns = in->recorded_ns = now.real_ns;
+}
+
+static void on_timer(uv_timer_t *timer)
+{
+    struct ingest *in = timer->data;
+    receive_look(in->receive);
+    int64_t mono_ns = line_read().mono_ns;
+    if (mono_ns - in->told_ns < SECOND_NS / 2)
+        return;
+    in->told_ns = mono_ns;
+    look_at_drops(in);
+    look_at_clock(in);
+}
+
+/* --- life ---------------------------------------------------------------------------- */
+
+static status build_run(struct ingest *in, struct err *err)
+{
+    const struct rig *rig = &in->settings->rig;
+    size_t bytes = (run_bytes(rig) + RUN_ALIGN - 1) / RUN_ALIGN * RUN_ALIGN;
+    in->memory = aligned_alloc(RUN_ALIGN, bytes);
+    if (!in->memory)
+        return err_set(err, ST_NOMEM,
+                       "%zu bytes for the run are not to be had; lower limits "
+                       "or rates",
+                       bytes);
+    in->run = run_init(in->memory, bytes, rig,
+                       (struct message_sink){say, in});
+    return ST_OK;
+}
+
+status ingest_start(struct ingest **out, uv_loop_t *loop,
+                    const struct settings *s, struct line_reading now,
+                    struct hub *hub, struct recorder *recorder,
+                    struct endpoint *at, struct err *err)
+{
+    struct ingest *in = calloc(1, sizeof *in);
+    *out = NULL;
+    if (!in)
+        return err_set(err, ST_NOMEM, "out of memory");
+    in->settings = s;
+    in->hub = hub;
+    in->recorder = recorder;
+    line_start(&in->line, now);
+    in->advanced_ns = in->recorded_ns = now.real_ns;
+    status st = build_run(in, err);
+    if (st == ST_OK)
+        st = endpoint_parse(at, s->udp, err);
+    if (st == ST_OK)
+        st = receive_start(&in->receive, loop, at, s->udp_buffer_bytes,
+                           (struct receive_taker){on_datagram, on_empty, in},
+                           err);
+    if (st != ST_OK) {
+        free(in->memory);
+        free(in);
+        return st;
+    }
+    in->own = endpoint_sender(&at->address);
+    run_start(in->run, now.real_ns);
+    uv_timer_init(loop, &in->timer);
+    in->timer.data = in;
+    uv_timer_start(&in->timer, on_timer, LOOK_MS, LOOK_MS);
+    *out = in;
+    return ST_OK;
+}
+
+void ingest_finish(struct ingest *in)
+{
+    uv_timer_stop(&in->timer);
+    receive_drain(in->receive);
+    look_at_drops(in);
+    int64_t end_ns = run_arrival(in->run, line_now(&in->line, line_read()));
+    if (in->recorder)
+        recorder_control(in->recorder, CONTROL_STOP, end_ns, 0, "");
+    run_stop(in->run, end_ns);
+}
+
+struct run *ingest_run(struct ingest *in)
+{
+    return in->run;
+}
+
+struct receive *ingest_receive(struct ingest *in)
+{
+    return in->receive;
+}
+
+void ingest_close(struct ingest *in)
+{
+    uv_close((uv_handle_t *)&in->timer, NULL);
+    receive_close(in->receive);
+}
+
+void ingest_free(struct ingest *in)
+{
+    free(in->memory);
+    free(in);
+}

@@ -1,0 +1,25 @@
+/* log.h - logfmt lines on stderr: what the operator must know.
+ *
+ * Under a service manager's journal the priority goes in front and the time
+ * is left out.  A site that may repeat uses log_often: once per second, with
+ * how many were left out.
+ */
+/* SPDX-License-Identifier: Apache-2.0 */
+#ifndef DAEMON_LOG_H
+#define DAEMON_LOG_H
+
+#include <stdint.h>
+
+void log_info(const char *fmt, ...) __attribute__((format(printf, 1, 2)));
+void log_warn(const char *fmt, ...) __attribute__((format(printf, 1, 2)));
+
+/* One per site, static and zero at first. */
+struct log_site {
+    int64_t last_s;
+    uint64_t n_left_out;
+};
+
+void log_often(struct log_site *site, const char *fmt, ...)
+    __attribute__((format(printf, 2, 3)));
+
+#endif

@@ -1,0 +1,292 @@
+/* SPDX-License-Identifier: Apache-2.0 */
+#include "daemon/server.h"
+
+#include <inttypes.h>
+#include <signal.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <sys/timex.h>
+#include <unistd.h>
+
+#include "core/wire/encode.h"
+#include "daemon/ingest.h"
+#include "daemon/log.h"
+
+struct server {
+    const struct settings *settings;
+    const struct server_options *options;
+    uv_loop_t loop;
+    uv_signal_t term, interrupt;
+    bool has_signals;
+    struct line_reading begun;
+    struct hub *hub;
+    struct recorder *recorder;
+    struct ingest *ingest;
+    struct endpoint udp, tcp;
+    int started;
+};
+
+/* --- components -------------------------------------------------------------------- */
+
+static status signals_start(struct server *s, struct err *err);
+static void signals_close(struct server *s);
+
+static status publish_start(struct server *s, struct err *err)
+{
+    return hub_start(&s->hub, s->settings, &s->tcp, err);
+}
+
+static void publish_close(struct server *s)
+{
+    hub_stop(s->hub);
+    s->hub = NULL;
+}
+
+static void on_gap(void *ctx, const char *why, uint64_t n)
+{
+    struct server *s = ctx;
+    hub_host(s->hub, "gap", why, n);
+}
+
+static status record_start(struct server *s, struct err *err)
+{
+    if (!s->settings->folder[0])
+        return ST_OK;
+    return recorder_start(&s->recorder, s->settings, s->begun.real_ns,
+                          (struct recorder_watch){on_gap, s}, err);
+}
+
+static void record_close(struct server *s)
+{
+    recorder_stop(s->recorder);
+    s->recorder = NULL;
+}
+
+static status receive_begin(struct server *s, struct err *err)
+{
+    if (!s->settings->udp[0])
+        return err_set(err, ST_SCHEMA,
+                       "%s: no receive.udp; add for example \"receive\": "
+                       "{\"udp\": \"127.0.0.1:8410\"}",
+                       s->settings->path);
+    return ingest_start(&s->ingest, &s->loop, s->settings, s->begun, s->hub,
+                        s->recorder, &s->udp, err);
+}
+
+static void log_summary(struct server *s);
+
+static void receive_end(struct server *s)
+{
+    ingest_finish(s->ingest);
+    log_summary(s);
+    ingest_close(s->ingest);
+    uv_run(&s->loop, UV_RUN_DEFAULT);
+    ingest_free(s->ingest);
+    s->ingest = NULL;
+}
+
+/* Started top to bottom, closed bottom to top.  Receiving is last: no
+ * datagram may arrive before everything that handles it is ready. */
+static const struct component {
+    status (*start)(struct server *s, struct err *err);
+    void (*close)(struct server *s);
+} components[] = {{signals_start, signals_close},
+                  {publish_start, publish_close},
+                  {record_start, record_close},
+                  {receive_begin, receive_end}};
+
+enum { N_COMPONENTS = sizeof components / sizeof *components };
+
+static void close_components(struct server *s)
+{
+    while (s->started > 0)
+        components[--s->started].close(s);
+    uv_run(&s->loop, UV_RUN_DEFAULT);
+    uv_loop_close(&s->loop);
+}
+
+static status start_components(struct server *s, struct err *err)
+{
+    for (s->started = 0; s->started < N_COMPONENTS; s->started++) {
+        status st = components[s->started].start(s, err);
+        if (st != ST_OK)
+            return st;
+    }
+    return ST_OK;
+}
+
+/* --- signals ------------------------------------------------------------------------- */
+
+static void on_signal(uv_signal_t *handle, int number)
+{
+    struct server *s = handle->data;
+    log_info("signal %d: stopping; a second one ends at once", number);
+    signal(number, SIG_DFL);
+    uv_signal_stop(&s->term);
+    uv_signal_stop(&s->interrupt);
+    signal(SIGTERM, SIG_DFL);
+    signal(SIGINT, SIG_DFL);
+    uv_stop(&s->loop);
+}
+
+static status signals_start(struct server *s, struct err *err)
+{
+    (void)err;
+    signal(SIGPIPE, SIG_IGN);
+    uv_signal_init(&s->loop, &s->term);
+    uv_signal_init(&s->loop, &s->interrupt);
+    s->term.data = s->interrupt.data = s;
+    uv_signal_start(&s->term, on_signal, SIGTERM);
+    uv_signal_start(&s->interrupt, on_signal, SIGINT);
+    uv_unref((uv_handle_t *)&s->term);
+    uv_unref((uv_handle_t *)&s->interrupt);
+    return ST_OK;
+}
+
+static void signals_close(struct server *s)
+{
+    uv_close((uv_handle_t *)&s->term, NULL);
+    uv_close((uv_handle_t *)&s->interrupt, NULL);
+}
+
+/* --- what the operator is told ---------------------------------------------------------- */
+
+static double declared_rate(const struct rig *rig)
+{
+    double rate_hz = 0;
+    for (int i = 0; i < rig->n_sensors; i++)
+        rate_hz += rig->sensor[i].rate_hz;
+    return rate_hz;
+}
+
+static void tell_reach(const struct server *s)
+{
+    char udp[80], tcp[80];
+    endpoint_print(&s->udp, udp, sizeof udp);
+    endpoint_print(&s->tcp, tcp, sizeof tcp);
+    log_info("receiving on udp %s: %s", udp,
+             endpoint_is_loopback(&s->udp)
+                 ? "only programs on this machine can send"
+                 : "everybody on the network can send; receive.senders "
+                   "narrows that");
+    if (!s->settings->tcp[0])
+        log_info("publishing nowhere: no serve.tcp");
+    else if (endpoint_is_loopback(&s->tcp))
+        log_info("publishing on tcp %s: only programs on this machine can "
+                 "listen",
+                 tcp);
+    else
+        log_warn("publishing on tcp %s: everybody on the network can listen",
+                 tcp);
+    int size = receive_buffer(ingest_receive(s->ingest));
+    double rate_hz = declared_rate(&s->settings->rig);
+    log_info("socket buffer %d KiB: bridges %.0f ms of standstill at the "
+             "declared %.0f datagrams/s%s",
+             size / 1024, size / 832.0 / rate_hz * 1e3, rate_hz,
+             size < s->settings->udp_buffer_bytes
+                 ? "; less than receive.buffer: raise net.core.rmem_max"
+                 : "");
+}
+
+static void tell_capture(const struct server *s)
+{
+    if (!s->recorder) {
+        log_warn("no capture: this run cannot be repeated");
+        return;
+    }
+    double bytes_per_s = declared_rate(&s->settings->rig) * 130;
+    double lasts_s = recorder_lasts_s(s->settings, bytes_per_s);
+    log_info("capture in %s: the disk lasts %.1f h at the declared rates, "
+             "down to capture.floor",
+             recorder_folder(s->recorder), lasts_s / 3600);
+}
+
+static status write_ports(const struct server *s, struct err *err)
+{
+    const char *path = s->options->port_file;
+    char part[SETTINGS_PATH_SIZE];
+    if (!path)
+        return ST_OK;
+    snprintf(part, sizeof part, "%s.part", path);
+    FILE *f = fopen(part, "w");
+    if (!f)
+        return err_set(err, ST_IO, "--port-file %s: cannot be written", path);
+    fprintf(f, "{\"udp\":%d,\"tcp\":%d,\"pid\":%d,\"capture\":\"%s\"}\n",
+            endpoint_port(&s->udp),
+            s->settings->tcp[0] ? endpoint_port(&s->tcp) : 0, (int)getpid(),
+            s->recorder ? recorder_folder(s->recorder) : "");
+    fclose(f);
+    if (rename(part, path) != 0)
+        return err_set(err, ST_IO, "--port-file %s: cannot be written", path);
+    return ST_OK;
+}
+
+static void log_summary(struct server *s)
+{
+    const struct rig *rig = &s->settings->rig;
+    struct run *run = ingest_run(s->ingest);
+    size_t size = wire_message_bound(rig);
+    char *text = malloc(size);
+    struct track_summary track;
+    if (!text)
+        return;
+    struct receive_counts c = receive_counts(ingest_receive(s->ingest));
+    log_info("summary follows; dropped by the kernel %" PRIu64 ", cut %" PRIu64,
+             c.n_dropped, c.n_cut);
+    fwrite(text, 1, wire_summary_begin(rig, run_counts(run), text, size),
+           stderr);
+    for (int i = 0; run_track_summary(run, i, &track); i++)
+        fwrite(text, 1, wire_summary_track(rig, &track, i == 0, text, size),
+               stderr);
+    fwrite(text, 1, wire_summary_end(text, size), stderr);
+    free(text);
+}
+
+/* Waits for a synchronised clock where senders elsewhere stamp by theirs. */
+static void wait_for_clock(struct server *s)
+{
+    struct endpoint at;
+    struct timex t = {0};
+    if (endpoint_parse(&at, s->settings->udp, NULL) != ST_OK ||
+        endpoint_is_loopback(&at))
+        return;
+    int64_t until_ns = line_read().mono_ns + s->settings->clock_wait_ns;
+    bool has_said = false;
+    while (adjtimex(&t) == TIME_ERROR || (t.status & STA_UNSYNC)) {
+        if (line_read().mono_ns >= until_ns) {
+            log_warn("the host's clock is not synchronised: going on without; "
+                     "stamps of other machines may not fit");
+            return;
+        }
+        if (!has_said)
+            log_info("waiting up to %.0f s (clock.wait) for a synchronised "
+                     "clock; a signal ends the wait",
+                     (double)s->settings->clock_wait_ns * 1e-9);
+        has_said = true;
+        if (usleep(200000) != 0)
+            return;
+    }
+}
+
+status server_run(const struct settings *settings,
+                  const struct server_options *o, struct err *err)
+{
+    struct server s = {.settings = settings, .options = o};
+    if (settings->udp[0])
+        wait_for_clock(&s);
+    uv_loop_init(&s.loop);
+    s.begun = line_read();
+    status st = start_components(&s, err);
+    if (st == ST_OK) {
+        tell_reach(&s);
+        tell_capture(&s);
+        st = write_ports(&s, err);
+    }
+    if (st == ST_OK) {
+        hub_host(s.hub, "start", "the daemon began to receive", 0);
+        uv_run(&s.loop, UV_RUN_DEFAULT);
+    }
+    close_components(&s);
+    return st;
+}
