@@ -4,15 +4,19 @@
 # and find data as "tests/data/...".
 enable_testing()
 
+file(GLOB support_sources CONFIGURE_DEPENDS tests/support/*.c)
+add_library(support STATIC ${support_sources})
+target_link_libraries(support PUBLIC toollib PkgConfig::CHECK)
+target_compile_definitions(support PUBLIC
+  TOOL_PATH="$<TARGET_FILE:ropewalk>" DAEMON_PATH="$<TARGET_FILE:ropewalkd>")
+
 function(check_tests folder)
   file(GLOB files CONFIGURE_DEPENDS tests/${folder}/test_*.c)
   foreach(file ${files})
     get_filename_component(name ${file} NAME_WE)
-    add_executable(${name} ${file} tests/main.c tests/support/drive.c
-                   tests/support/tool.c)
-    target_link_libraries(${name} PRIVATE toollib PkgConfig::CHECK ${MSGPACKC})
-    target_compile_definitions(${name} PRIVATE
-      TOOL_PATH="$<TARGET_FILE:ropewalk>" DAEMON_PATH="$<TARGET_FILE:ropewalkd>")
+    add_executable(${name} ${file} tests/main.c)
+    target_link_libraries(${name} PRIVATE support toollib PkgConfig::CHECK
+                          ${MSGPACKC})
     add_dependencies(${name} ropewalk ropewalkd)
     add_test(NAME ${folder}.${name} COMMAND ${name}
              WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})

@@ -3,8 +3,6 @@
 #ifndef TOOLS_ADDRESS_H
 #define TOOLS_ADDRESS_H
 
-#include <stdbool.h>
-
 #include "config/err.h"
 
 /* Where the daemon listens unless a rig file says otherwise. */
@@ -14,7 +12,8 @@
 /* The port of "HOST:PORT" or "[HOST]:PORT", 0 if it has none. */
 int address_port(const char *address);
 
-/* A connected socket, type SOCK_DGRAM or SOCK_STREAM, or -1 with *err. */
+/* A connected socket, type SOCK_DGRAM or SOCK_STREAM; -1 with *err, ST_SCHEMA
+ * when the text is no address. */
 int address_connect(const char *address, int type, struct err *err);
 
 #endif

@@ -131,7 +131,7 @@ static int reach(struct job *job, bool is_first, struct err *err)
     int wait = FOLLOW_PAUSE_MS;
     for (;;) {
         int fd = address_connect(job->at, SOCK_STREAM, err);
-        if (fd >= 0 || err->code == ST_ARG)
+        if (fd >= 0 || err->code == ST_SCHEMA)
             return fd;
         if ((is_first && monotonic_ms() >= give_up) ||
             monotonic_ms() >= job->end_ms)
@@ -146,7 +146,7 @@ static int follow(struct job *job)
     struct err err;
     for (bool is_first = true;; is_first = false) {
         int fd = reach(job, is_first, &err);
-        if (fd < 0 && err.code == ST_ARG) {
+        if (fd < 0 && err.code == ST_SCHEMA) {
             call_say(job->call, "%s", err.text);
             return EXIT_WRONG_USE;
         }
@@ -262,6 +262,11 @@ static int run(const struct call *call)
         if (rig == NULL)
             return call_rig_exit(job.at);
         job.at = rig->tcp;
+        if (job.at[0] == '\0') {
+            call_say(call, "%s: serves no TCP; add serve.tcp to it", rig->path);
+            settings_free(rig);
+            return EXIT_NOT_THERE;
+        }
     }
     job.line = malloc(FOLLOW_LINE_MAX);
     int code = EXIT_WRONG_USE;

@@ -22,18 +22,18 @@ struct job {
 
 /* --- what is said beside the data ---------------------------------------- */
 
-static void say_file(struct job *job, const struct capture *c, const char *path)
+static void say_file(struct job *job, const struct capture_tally *tally,
+                     const char *path)
 {
-    if (c->n_torn_bytes > 0)
+    if (tally->torn_bytes > 0)
         call_say(job->call,
-                 "%s: the last %llu bytes are no whole record, as "
-                 "after a crash; everything before them is replayed",
-                 path, (unsigned long long)c->n_torn_bytes);
-    if (c->n_skipped > 0)
+                 "%s: %llu bytes are no whole record, as after a crash; every "
+                 "whole record is replayed",
+                 path, (unsigned long long)tally->torn_bytes);
+    if (tally->n_skipped > 0)
         call_say(job->call,
-                 "%s: %llu records are no whole UDP datagram and "
-                 "are left out",
-                 path, (unsigned long long)c->n_skipped);
+                 "%s: %llu records are no whole UDP datagram and are left out",
+                 path, (unsigned long long)tally->n_skipped);
 }
 
 static void say_result(const struct job *job)
@@ -87,7 +87,7 @@ static int replay_capture(struct job *job, const char *path)
             call_progress(&job->progress_ns, "%llu records",
                           (unsigned long long)job->n_records);
     }
-    say_file(job, c, path);
+    say_file(job, capture_tally(c), path);
     capture_close(c);
     return EXIT_FINE;
 }

@@ -318,10 +318,17 @@ static int run_job(struct job *job)
     job->to = call_option(job->call, "to");
     if (job->to == NULL)
         job->to = job->rig == NULL ? ADDRESS_UDP : job->rig->udp;
+    if (job->to[0] == '\0') {
+        call_say(job->call,
+                 "%s: receives nothing; add receive.udp to it, or "
+                 "give --to HOST:PORT",
+                 path);
+        return EXIT_NOT_THERE;
+    }
     job->fd = address_connect(job->to, SOCK_DGRAM, &err);
     if (job->fd < 0) {
         call_say(job->call, "%s", err.text);
-        return err.code == ST_ARG ? EXIT_WRONG_USE : EXIT_NOT_THERE;
+        return err.code == ST_SCHEMA ? EXIT_WRONG_USE : EXIT_NOT_THERE;
     }
     int code = send_all(job);
     if (code == EXIT_FINE && was_refused(job->fd)) {

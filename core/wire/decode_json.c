@@ -187,11 +187,13 @@ static bool whole(const char *s, const char *end, struct value *v)
 {
     bool is_negative = *s == '-';
     s += is_negative;
-    if (end - s > 19)
-        return false;
     uint64_t n = 0;
-    for (; s < end; s++)
-        n = n * 10 + (uint64_t)(*s - '0');
+    for (; s < end; s++) {
+        uint64_t digit = (uint64_t)(*s - '0');
+        if (n > (UINT64_MAX - digit) / 10)
+            return false;
+        n = n * 10 + digit;
+    }
     if (is_negative && (n == 0 || n > INT64_MAX))
         return false;
     v->kind = n > INT64_MAX ? VALUE_UINT : VALUE_INT;
