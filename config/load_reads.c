@@ -281,6 +281,11 @@ static void read_one(const struct reading *c, const cJSON *node)
             read_place(c, node, form, i != 1, i != 0);
             return;
         }
+        if (form != NULL && loading_state(c->kind, forms[i]) < 0) {
+            loading_error(c->l, form, "\"%s\" must be a list of coordinates; "
+                          "write it like [\"x\", \"y\"]", forms[i]);
+            return;
+        }
     }
     if (!is_planned(c, node))
         read_sum(c, node);

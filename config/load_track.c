@@ -316,6 +316,8 @@ static void add_track(struct loading *l, const cJSON *node,
     const cJSON *state = loading_get(node, "state"), *block;
     int n = l->problems->n;
     identify(l, node, kind);
+    if (loading_get(node, "like") != NULL)
+        return; /* reported: what it lacks is not known */
     if (state == NULL)
         loading_error_key(l, node, "the track \"%.64s\" has no state; give "
                           "\"state\": [{\"model\": ..}]", node->string);

@@ -304,15 +304,15 @@ static void like(struct loading *l, cJSON *group, cJSON *entry,
         } else if (model == entry || i == LIKE_MAX) {
             loading_error(l, node, "\"like\" leads back to itself; name a %s "
                           "that is written out", what);
-            model = NULL;
+            return; /* what stays says that the entry is not whole */
         }
+        if (model == NULL)
+            return;
         /* `node` goes first, so that a chain copies the model's own. */
         cJSON_DetachItemViaPointer(entry, node);
         if (cJSON_IsObject(model))
             copy_absent(l, entry, model);
         cJSON_Delete(node);
-        if (model == NULL)
-            return;
     }
 }
 

@@ -5,7 +5,62 @@
 #include <math.h>
 #include <stdarg.h>
 #include <stdio.h>
+#include <stdlib.h>
 #include <string.h>
+
+/* By place, then as they were made. */
+static int by_place(const void *a, const void *b)
+{
+    const long *one = a, *other = b;
+    if (one[0] != other[0])
+        return one[0] < other[0] ? -1 : 1;
+    return one[1] < other[1] ? -1 : one[1] > other[1];
+}
+
+void loading_sort(struct loading *l)
+{
+    struct problems *p = l->problems;
+    long order[PROBLEMS_MAX][2]; /* place, index of the mark              */
+    size_t first = l->n_marks > 0 ? l->mark[0].start : 0;
+    if (l->n_marks < 2 || l->n_marks < p->n)
+        return; /* nothing to sort, or not all are ours */
+    char *copy = malloc(p->len - first);
+    if (copy == NULL)
+        return;
+    memcpy(copy, p->text + first, p->len - first);
+    for (int i = 0; i < l->n_marks; i++) {
+        order[i][0] = l->mark[i].place;
+        order[i][1] = i;
+    }
+    qsort(order, (size_t)l->n_marks, sizeof *order, by_place);
+    size_t len = first, last = 0, last_len = 0;
+    for (int i = 0; i < l->n_marks; i++) {
+        const char *text = copy + l->mark[order[i][1]].start - first;
+        size_t n = l->mark[order[i][1]].len;
+        if (n == last_len && memcmp(p->text + last, text, n) == 0) {
+            p->n--;
+            continue;
+        }
+        memcpy(p->text + len, text, n);
+        last = len;
+        last_len = n;
+        len += n;
+    }
+    p->len = len;
+    p->text[len] = '\0';
+    free(copy);
+}
+
+/* Remembers the report that was added since `start`. */
+static void mark(struct loading *l, int place, size_t start)
+{
+    if (l->n_marks == PROBLEMS_MAX)
+        return;
+    l->mark[l->n_marks].place =
+        place <= LOADING_CHANGE ? LOADING_BYTES_MAX - place : place;
+    l->mark[l->n_marks].start = start;
+    l->mark[l->n_marks++].len = l->problems->len - start;
+}
 
 static void report_change(struct loading *l, int i, const char *what,
                           const char *remedy)
@@ -29,8 +84,10 @@ static void report(struct loading *l, const cJSON *at, bool at_key,
         remedy += 2;
     }
     int place = at->valueint;
+    size_t start = l->problems->len;
     if (place <= LOADING_CHANGE) {
         report_change(l, LOADING_CHANGE - place, text, remedy);
+        mark(l, place, start);
         return;
     }
     size_t offset = place < 0 ? 0 : (size_t)place;
@@ -38,6 +95,7 @@ static void report(struct loading *l, const cJSON *at, bool at_key,
         offset = textpos_key(l->text, offset);
     const struct textpos_report r = {l->path, l->raw, l->len, text, remedy};
     textpos_report(l->problems, &r, offset);
+    mark(l, (int)offset, start);
 }
 
 void loading_error(struct loading *l, const cJSON *at, const char *fmt, ...)
@@ -191,10 +249,15 @@ bool loading_integer(struct loading *l, const cJSON *object, const char *row,
         *value = (int)n;
         return true;
     }
-    if (!cJSON_IsNumber(node))
+    if (!cJSON_IsNumber(node) || node->valuedouble != floor(node->valuedouble))
         return false;
     n = node->valuedouble;
-    if (n < least || n > most || n != floor(n)) {
+    if (least == most && n != least) {
+        loading_error(l, node, "\"%.64s\" must be %d; no other is built",
+                      node->string, least);
+        return false;
+    }
+    if (n < least || n > most) {
         loading_error(l, node, "\"%.64s\" must be a whole number from %d to "
                       "%d; correct it", node->string, least, most);
         return false;

@@ -34,6 +34,11 @@ struct loading {
     int n_changes;
     cJSON *root;
     bool is_out_of_memory;
+    int n_marks;
+    struct {
+        long place;   /* order among reports: offset, then changes        */
+        size_t start, len; /* its part of problems->text                  */
+    } mark[PROBLEMS_MAX];
 };
 
 /* One report at a value, or at its key: "reason; remedy". */
@@ -41,6 +46,10 @@ void loading_error(struct loading *l, const cJSON *at, const char *fmt, ...)
     __attribute__((format(printf, 3, 4)));
 void loading_error_key(struct loading *l, const cJSON *at, const char *fmt,
                        ...) __attribute__((format(printf, 3, 4)));
+
+/* Puts the reports in the order of the file and drops equal ones, which names
+ * in braces make. */
+void loading_sort(struct loading *l);
 
 /* An unknown name: the nearest of the list, or all of it, is the remedy. */
 void loading_unknown(struct loading *l, const cJSON *at, bool at_key,

@@ -124,12 +124,12 @@ static const char *alias(const char *word)
     return word;
 }
 
-/* The unit in words of the unit library; NULL and err when a word is
- * refused. */
+/* The unit in words of the unit library, without blanks at its end. */
 static status translate(const char *unit, char out[UNIT_TEXT_SIZE],
                         struct err *err)
 {
     size_t n = 0;
+    out[0] = '\0';
     for (const char *s = unit; *s != '\0';) {
         char word[TOKEN_SIZE] = "";
         size_t len = 0;
@@ -149,6 +149,8 @@ static status translate(const char *unit, char out[UNIT_TEXT_SIZE],
             return err_set(err, ST_SCHEMA, "the unit is too long; shorten it");
         s += len;
     }
+    while (n > 0 && out[n - 1] == ' ')
+        out[--n] = '\0';
     return ST_OK;
 }
 
@@ -162,7 +164,7 @@ static status parse_unit(struct quantity_units *u, const char *unit,
     *out = strpbrk(text, "@\"'") != NULL
                ? NULL
                : ut_parse(u->system, text, UT_UTF8);
-    if (*out == NULL || unit[0] == '\0')
+    if (*out == NULL || text[0] == '\0')
         return err_set(err, ST_SCHEMA,
                        "the unit \"%.64s\" is not known; write units like "
                        "mm, m/s2, deg, rev/min, %%, or 1", unit);
@@ -195,7 +197,7 @@ static status kinds_differ(const char *from, const char *to, struct err *err)
         hint = " (rev/min and rad/s turn, Hz counts)";
     return err_set(err, ST_SCHEMA,
                    "the unit \"%.64s\" is of another kind than \"%.64s\"; "
-                   "give a unit of the kind of %.64s%s", from, to, to, hint);
+                   "give one that converts to %.64s%s", from, to, to, hint);
 }
 
 /* Slope and offset from a converter; false if it is no straight line. */

@@ -179,7 +179,8 @@ bool syntax_check(const char *text, size_t *at, const char **what)
         if (is_ok && is_whole)
             is_ok = after(&c);
     } while (is_ok && c.depth > 0);
-    blanks(&c);
+    if (is_ok)
+        blanks(&c);
     if (is_ok && *c.s != '\0')
         is_ok = fault(&c, "text after the end; remove it");
     *at = (size_t)(c.s - text);

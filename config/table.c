@@ -62,7 +62,7 @@ const char *table_takes(const struct table_row *row)
     case TABLE_ANY:
         break;
     }
-    return "a value";
+    return "a text, a number, a list or an object";
 }
 
 /* A line made by printf goes to the caller's function. */

@@ -1,33 +1,78 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "daemon/log.h"
 
+#include <poll.h>
 #include <stdarg.h>
+#include <stdbool.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <time.h>
+#include <unistd.h>
 
-static void line(int priority, const char *word, const char *fmt, va_list args)
+enum { TEXT_SIZE = 1024, LINE_SIZE = 3072 }; /* LINE_SIZE <= PIPE_BUF        */
+
+/* Quoted: what came over a wire cannot end the line, begin a key or steer a
+ * terminal. */
+static size_t quote(char *out, size_t size, const char *text)
 {
-    char text[1024], stamp[40] = "";
-    struct timespec now;
-    struct tm utc;
+    size_t n = 0;
+    out[n++] = '"';
+    for (; *text && n + 6 < size; text++) {
+        unsigned char c = (unsigned char)*text;
+        if (c == '"' || c == '\\') {
+            out[n++] = '\\';
+            out[n++] = (char)c;
+        } else if (c < 0x20 || c >= 0x7f) {
+            n += (size_t)snprintf(out + n, size - n, "\\x%02x", c);
+        } else {
+            out[n++] = (char)c;
+        }
+    }
+    out[n++] = '"';
+    out[n] = 0;
+    return n;
+}
+
+/* A reader of our stderr that stands still must not hold up the fusion: a
+ * pipe that polls writable takes a whole line of this size at once. */
+static bool put(const char *line, size_t len)
+{
+    struct pollfd out = {STDERR_FILENO, POLLOUT, 0};
+    if (poll(&out, 1, 0) != 1 || !(out.revents & POLLOUT))
+        return false;
+    return write(STDERR_FILENO, line, len) == (ssize_t)len;
+}
+
+static bool say(int priority, const char *level, const char *fmt, va_list args)
+    __attribute__((format(printf, 3, 0)));
+
+static bool say(int priority, const char *level, const char *fmt, va_list args)
+{
+    char text[TEXT_SIZE], line[LINE_SIZE], stamp[40] = "";
+    size_t n;
     vsnprintf(text, sizeof text, fmt, args);
     if (getenv("JOURNAL_STREAM")) {
-        fprintf(stderr, "<%d>%s\n", priority, text);
-        return;
+        n = (size_t)snprintf(line, sizeof line, "<%d>level=%s msg=", priority,
+                             level);
+    } else {
+        struct timespec now;
+        struct tm utc;
+        clock_gettime(CLOCK_REALTIME, &now);
+        gmtime_r(&now.tv_sec, &utc);
+        strftime(stamp, sizeof stamp, "%Y-%m-%dT%H:%M:%S", &utc);
+        n = (size_t)snprintf(line, sizeof line, "t=%s.%03ldZ level=%s msg=",
+                             stamp, now.tv_nsec / 1000000, level);
     }
-    clock_gettime(CLOCK_REALTIME, &now);
-    gmtime_r(&now.tv_sec, &utc);
-    strftime(stamp, sizeof stamp, "%Y-%m-%dT%H:%M:%S", &utc);
-    fprintf(stderr, "%s.%03ldZ %s %s\n", stamp, now.tv_nsec / 1000000, word,
-            text);
+    n += quote(line + n, sizeof line - n - 1, text);
+    line[n++] = '\n';
+    return put(line, n);
 }
 
 void log_info(const char *fmt, ...)
 {
     va_list args;
     va_start(args, fmt);
-    line(6, "info", fmt, args);
+    say(6, "info", fmt, args);
     va_end(args);
 }
 
@@ -35,7 +80,7 @@ void log_warn(const char *fmt, ...)
 {
     va_list args;
     va_start(args, fmt);
-    line(4, "warn", fmt, args);
+    say(4, "warn", fmt, args);
     va_end(args);
 }
 
@@ -50,10 +95,13 @@ void log_often(struct log_site *site, const char *fmt, ...)
     }
     site->last_s = now.tv_sec;
     va_start(args, fmt);
-    line(4, "warn", fmt, args);
+    bool is_said = say(4, "warn", fmt, args);
     va_end(args);
-    if (site->n_left_out > 0)
-        log_warn("the same %llu times more",
+    if (!is_said)
+        site->n_left_out++;
+    else if (site->n_left_out > 0) {
+        log_warn("left out since the last line like this: %llu",
                  (unsigned long long)site->n_left_out);
-    site->n_left_out = 0;
+        site->n_left_out = 0;
+    }
 }

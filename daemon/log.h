@@ -1,8 +1,11 @@
 /* log.h - logfmt lines on stderr: what the operator must know.
  *
+ *     t=2026-05-04T10:00:00.123Z level=warn msg="..."
+ *
  * Under a service manager's journal the priority goes in front and the time
  * is left out.  A site that may repeat uses log_often: once per second, with
- * how many were left out.
+ * how many were left out.  Nobody waits for a stderr that is not read: the
+ * line is left out.  Any thread may call; a site belongs to one thread.
  */
 /* SPDX-License-Identifier: Apache-2.0 */
 #ifndef DAEMON_LOG_H

@@ -86,7 +86,7 @@ struct settings *call_rig_path(const struct call *call, const char *path)
         if (ok && is_set)
             ok = split_set(call, text[n], &change[n]);
         else if (ok)
-            change[n] = (struct settings_change){text[n], NULL};
+            change[n] = (struct settings_change){text[n], "null"};
     }
     if (ok && settings_load(&s, path, change, n_all, &problems) != ST_OK) {
         fputs(problems.text == NULL ? "out of memory\n" : problems.text,

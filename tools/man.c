@@ -206,6 +206,16 @@ static bool write_tool(const struct call *call, const char *folder)
     return page_close(call, &page);
 }
 
+/* What ropewalkd --help says, as rows. */
+static const struct option_row daemon_options[] = {
+    {"check", NULL, "only says whether the rig file is good", false},
+    {"set", "PATH=VALUE", "changes a setting of the rig file", true},
+    {"no-capture", NULL, "keeps no record of what arrives", false},
+    {"port-file", "FILE", "writes the ports in use there, once ready", false},
+    {"version", NULL, "names the build", false},
+    {NULL, NULL, NULL, false},
+};
+
 static bool write_daemon(const struct call *call, const char *folder)
 {
     struct page page = {NULL, "ropewalkd", "8",
@@ -213,7 +223,7 @@ static bool write_daemon(const struct call *call, const char *folder)
     if (!page_open(call, &page, folder))
         return false;
     FILE *to = page.to;
-    fputs(".Sh SYNOPSIS\n.Nm\n.Ar RIG.json\n.Sh DESCRIPTION\n"
+    fputs(".Sh SYNOPSIS\n.Nm\n.Ar RIG.json\n.Op options\n.Sh DESCRIPTION\n"
           "Receives measurements as UDP datagrams, lays them in order of "
           "their own time, and serves one estimate per track with its "
           "standard uncertainty and a verdict.\n"
@@ -223,7 +233,10 @@ static bool write_daemon(const struct call *call, const char *folder)
           ".Xr ropewalk\\-rig 5 .\n"
           "It is not a safety function: no interlock, limit or protective "
           "stop may hang on an estimate.\n"
-          ".Sh SIGNALS\n.Bl -tag -width SIGTERM\n.It Dv SIGTERM , SIGINT\n"
+          ".Pp\nThe options are as follows:\n.Bl -tag -width Ds\n",
+          to);
+    put_options(to, daemon_options);
+    fputs(".El\n.Sh SIGNALS\n.Bl -tag -width SIGTERM\n.It Dv SIGTERM , SIGINT\n"
           "Ends the line: everything settles, the capture is closed, and the "
           "exit status is 0.\nA second one ends it at once.\n.El\n",
           to);

@@ -64,6 +64,7 @@ static status encode(const struct scene_play *p, const struct scene_post *post,
         writer_number(&w, reading->z[i]);
     if (sensor->reads.m > 1)
         writer_close(&w);
+    writer_close(&w);
     d->len = writer_finish(&w);
     d->sensor = reading->sensor;
     d->track = reading->track;

@@ -87,8 +87,8 @@ static void print_kind(const struct rig *rig, int index)
 {
     const struct rig_kind *kind = &rig->kind[index];
     char unit[RIG_UNIT_SIZE + 16], words[RIG_TEXT_SIZE], text[32];
-    printf("\ntrack %s%s, %d states\n", kind->id, kind->is_prefix ? "*" : "",
-           kind->n);
+    printf("\ntrack %s%s, %d state%s\n", kind->id, kind->is_prefix ? "*" : "",
+           kind->n, kind->n == 1 ? "" : "s");
     for (int i = 0; i < kind->n_blocks; i++) {
         const struct block *b = &kind->block[i];
         printf("  %s: %s", kind->state[b->at].name, rig_text_model(b->model));
@@ -137,9 +137,9 @@ static void print_sensor(const struct rig *rig, const struct rig_sensor *sensor)
     if (sensor->has_gate)
         printf("  gate %g: refused above NIS %.4g\n", sensor->gate_p,
                sensor->gate[sensor->reads.m]);
-    printf("  silent after %s; time is %s, minus %s; %d pending at most\n",
-           silent, stamps[sensor->stamp], delay,
-           rig_pending_quota(rig, sensor));
+    printf("  silent after %s; time is %s%s%s; %d pending at most\n", silent,
+           stamps[sensor->stamp], sensor->delay_ns != 0 ? ", minus " : "",
+           sensor->delay_ns != 0 ? delay : "", rig_pending_quota(rig, sensor));
 }
 
 static void print_note(void *ctx, const char *text)
@@ -155,12 +155,14 @@ static void print_load(const struct settings *s)
     double cost_s = check_cost_s(rig);
     rig_text_bytes((double)run_bytes(rig), memory, sizeof memory);
     rig_text_bytes(disk_bytes_per_s(rig) * 3600, disk, sizeof disk);
-    printf("\nmemory %s for the estimate; capture about %s an hour and track\n",
-           memory, disk);
-    printf("load %g measurements/s a track", measurements_per_s(rig));
+    printf("\nmemory %s for the estimate; capture about %s an hour\n", memory,
+           disk);
+    printf("load %g measurements/s", measurements_per_s(rig));
     if (cost_s > 0)
-        printf(", about %.2g us each on this machine, %.2g %% of one core",
+        printf(", about %.2g us each for the estimate on this machine, %.2g %% "
+               "of a core",
                cost_s * 1e6, 100 * cost_s * measurements_per_s(rig));
+    printf(" (one track of each kind)");
     printf("\nlimits: %d tracks, %d ids a sender, %g repeated steps a sensor "
            "and second\n",
            rig->max_tracks, rig->max_ids_per_sender, rig->max_steps);

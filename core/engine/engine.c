@@ -147,8 +147,8 @@ static void count_settled(struct engine *e, struct track *t, struct step *s)
 static void settle(struct engine *e, struct track *t, int64_t before_ns)
 {
     struct lay lay = laying(e);
-    while (t->n_settled < t->n_laid &&
-           track_step(t, t->n_settled)->t_ns < before_ns) {
+    for (int next; (next = track_next_settled(t)) >= 0 &&
+                   track_step(t, next)->t_ns < before_ns;) {
         const struct track_state *st;
         struct step *s = track_settle(t, &lay, &st);
         count_settled(e, t, s);
@@ -156,17 +156,19 @@ static void settle(struct engine *e, struct track *t, int64_t before_ns)
     }
 }
 
-static void give_up(struct engine *e, struct track *t)
+/* A candidate's first measurement found no second in time. */
+static void give_up_first(struct engine *e, struct track *t)
 {
-    while (t->n > 0) {
-        int sensor = track_step(t, 0)->sensor;
-        e->counts->sensor[sensor].outcome[OUTCOME_PENDING]--;
-        e->counts->sensor[sensor].outcome[OUTCOME_UNKNOWN_TRACK]++;
-        e->counts->total.outcome[OUTCOME_PENDING]--;
-        e->counts->total.outcome[OUTCOME_UNKNOWN_TRACK]++;
-        track_drop_first(t);
-    }
-    roster_remove(&e->roster, t);
+    int sensor = track_step(t, 0)->sensor;
+    e->counts->sensor[sensor].outcome[OUTCOME_PENDING]--;
+    e->counts->sensor[sensor].outcome[OUTCOME_UNKNOWN_TRACK]++;
+    e->counts->total.outcome[OUTCOME_PENDING]--;
+    e->counts->total.outcome[OUTCOME_UNKNOWN_TRACK]++;
+    t->watch[e->local[sensor]].pending--;
+    track_drop_first(t);
+    track_confirm(t);
+    if (t->n == 0)
+        roster_remove(&e->roster, t);
 }
 
 /* Held measurements go in. */
@@ -186,7 +188,7 @@ static void move_on(struct engine *e, struct track *t, int64_t due_ns)
     if (t->is_confirmed)
         settle(e, t, due_ns - e->rig->horizon_ns);
     else if (t->n > 0)
-        give_up(e, t);
+        give_up_first(e, t);
     intake_schedule(e, t);
 }
 
@@ -256,10 +258,9 @@ void engine_finish(struct engine *e)
 {
     for (int i = e->roster.n - 1; i >= 0; i--) {
         struct track *t = &e->roster.track[e->roster.by_id[i]];
-        if (!t->is_confirmed) {
-            give_up(e, t);
-            intake_schedule(e, t);
-        }
+        while (!t->is_confirmed && t->n > 0)
+            give_up_first(e, t);
+        intake_schedule(e, t);
     }
     for (int i = 0; i < e->roster.n; i++) {
         struct track *t = &e->roster.track[e->roster.by_id[i]];

@@ -289,8 +289,7 @@ static void taken(struct engine *e, struct track *t, int sensor, int64_t t_ns)
     if (!t->has_greatest || t_ns > t->greatest_t_ns)
         t->greatest_t_ns = t_ns;
     t->has_greatest = true;
-    if (!t->is_confirmed && t->n >= 2)
-        t->is_confirmed = true;
+    track_confirm(t);
     if (!t->is_touched) {
         t->is_touched = true;
         e->touched[e->n_touched++] = t->place;
@@ -342,9 +341,9 @@ void intake_schedule(struct engine *e, struct track *t)
     } else {
         if (t->n_laid < t->n)
             due = track_step(t, t->n_laid)->t_ns + e->rig->hold_ns;
-        if (t->n_settled < t->n_laid) {
-            int64_t settle =
-                track_step(t, t->n_settled)->t_ns + e->rig->horizon_ns + 1;
+        int next = track_next_settled(t);
+        if (next >= 0) {
+            int64_t settle = track_step(t, next)->t_ns + e->rig->horizon_ns + 1;
             due = settle < due ? settle : due;
         }
     }

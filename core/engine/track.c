@@ -202,6 +202,21 @@ void track_drop_first(struct track *t)
     pop(t);
 }
 
+void track_confirm(struct track *t)
+{
+    if (!t->is_confirmed && t->n >= 2 &&
+        track_step(t, 1)->t_ns - track_step(t, 0)->t_ns <= TRACK_CANDIDATE_NS)
+        t->is_confirmed = true;
+}
+
+int track_next_settled(const struct track *t)
+{
+    int next = t->n_settled;
+    if (t->kind->is_prefix && t->n_final == 0 && next == 0)
+        next = 1;
+    return next < t->n_laid ? next : -1;
+}
+
 /* --- laying ---------------------------------------------------------------- */
 
 /* The newest checkpoint before step i, and the step after it. */

@@ -159,6 +159,15 @@ const struct track_state *track_tip(const struct track *t);
 struct step *track_settle(struct track *t, const struct lay *lay,
                           const struct track_state **state);
 
+/* A prefix track is one from its first two measurements on that lie no more
+ * than TRACK_CANDIDATE_NS apart. */
+void track_confirm(struct track *t);
+
+/* The step whose stamp decides when something settles next, -1 = none is
+ * laid.  The first of a prefix track settles with the second, so that the
+ * order of what settles is a matter of stamps alone. */
+int track_next_settled(const struct track *t);
+
 /* A lone candidate's measurement is given up. */
 void track_drop_first(struct track *t);
 

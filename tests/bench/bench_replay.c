@@ -126,7 +126,7 @@ static double run_ideal(void)
     int n = 0;
     while (size - at >= 16) {
         size_t len = little(bytes + at + 8), body_len;
-        struct ideal_measurement m;
+        struct ideal_measurement m = {0};
         if (size - at - 16 < len)
             break;
         const uint8_t *body = payload(bytes + at + 16, len, &body_len);

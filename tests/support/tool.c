@@ -29,8 +29,8 @@ const char tool_rig[] =
 const char tool_table[] = "time_ns,arrival_ns,sensor,z0\n"
                           "0,,gauge,1000\n"
                           "100000000,130000000,gauge,1002\n"
-                          "200000000,,gauge,1004\n"
                           "110000000,220000000,gauge,1003\n"
+                          "200000000,,gauge,1004\n"
                           "300000000,,other,1\n";
 
 const char *tool_path(const char *name)

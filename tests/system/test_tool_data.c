@@ -175,12 +175,14 @@ START_TEST(send_takes_lines_in_batches_and_refuses_bad_ones)
     char address[64];
     int fd = listen_at(SOCK_DGRAM, address, sizeof address);
     ck_assert_int_eq(tool_run("1.5\nnothing\n{\"sensor\":\"b\",\"z\":2}\n"
-                              "{\"sensor\":\"b\",\"z\":1e999}\n3,4\n",
+                              "{\"sensor\":\"b\",\"z\":1e999}\n"
+                              "[{\"sensor\":\"b\",\"z\":1},{\"z\":2}]\n3,4\n",
                               "send", "a", "--batch", "2", "--to", address,
                               NULL),
                      EXIT_PROBLEM);
     ck_assert_ptr_nonnull(strstr(tool_said, "standard input:2: "));
     ck_assert_ptr_nonnull(strstr(tool_said, "standard input:4: "));
+    ck_assert_ptr_nonnull(strstr(tool_said, "standard input:5: "));
     receive(fd, &d);
     ck_assert_int_eq(d.n, 2);
     ck_assert_int_eq(d.element[1].sensor.at[0], 'b');

@@ -98,6 +98,9 @@ START_TEST(a_negative_number_is_an_argument)
 {
     ck_assert_int_eq(parse("laser -1.25"), EXIT_FINE);
     ck_assert_str_eq(call_arg(&call, 1), "-1.25");
+    forget();
+    ck_assert_int_eq(parse("laser -.5"), EXIT_FINE);
+    ck_assert_str_eq(call_arg(&call, 1), "-.5");
 }
 END_TEST
 
@@ -163,7 +166,7 @@ END_TEST
 
 static const char *fruit(const void *ctx, int i)
 {
-    static const char *const names[] = {"apple", "pear", "plum", NULL};
+    static const char *const names[] = {"apple", "pear", "plum", "fig", NULL};
     (void)ctx;
     return names[i];
 }
@@ -173,6 +176,7 @@ START_TEST(the_nearest_name_allows_two_letters_and_a_swap)
     ck_assert_str_eq(call_nearest("aplpe", fruit, NULL), "apple");
     ck_assert_str_eq(call_nearest("paer", fruit, NULL), "pear");
     ck_assert_str_eq(call_nearest("pllums", fruit, NULL), "plum");
+    ck_assert_str_eq(call_nearest("fgi", fruit, NULL), "fig");
     ck_assert_ptr_null(call_nearest("cherry", fruit, NULL));
     ck_assert_ptr_null(call_nearest("", fruit, NULL));
 }

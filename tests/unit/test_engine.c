@@ -57,8 +57,8 @@ START_TEST(a_late_arrival_k_deep_costs_at_most_k_plus_8_steps)
     d.keeps_text = false;
     drive_start(&d, T0);
     int64_t t_ns = T0;
-    for (int i = 0; i < 90; i++)
-        feed_one(&d, is_wide, t_ns += 10 * MS, t_ns);
+    for (int i = 0; i < 90; i++, t_ns += 10 * MS)
+        feed_one(&d, is_wide, t_ns + 10 * MS, t_ns + 10 * MS);
     for (int k = 0; k < 85; k++) {
         uint64_t before = run_steps(d.run);
         feed_one(&d, is_wide, t_ns - k * 10 * MS - 5 * MS, t_ns);
@@ -81,8 +81,8 @@ START_TEST(one_late_arrival_in_a_full_ring_costs_its_depth_plus_8)
     d.keeps_text = false;
     drive_start(&d, T0);
     int64_t t_ns = T0;
-    for (int i = 0; i < 400; i++)
-        feed_one(&d, is_wide, t_ns += 10 * MS, t_ns);
+    for (int i = 0; i < 400; i++, t_ns += 10 * MS)
+        feed_one(&d, is_wide, t_ns + 10 * MS, t_ns + 10 * MS);
     uint64_t before = run_steps(d.run);
     feed_one(&d, is_wide, t_ns - k * 10 * MS + 5 * MS, t_ns);
     uint64_t cost = run_steps(d.run) - before;
@@ -95,8 +95,8 @@ END_TEST
 /* --- allocation -------------------------------------------------------------- */
 
 /* The loader's own allocations do not count: only what happens in between. */
-static bool is_counting;
-static uint64_t n_allocations;
+static volatile bool is_counting; /* the compiler knows malloc: tell it */
+static volatile uint64_t n_allocations;
 
 void *__real_malloc(size_t size);
 void *__real_calloc(size_t n, size_t size);
@@ -133,8 +133,9 @@ START_TEST(a_million_measurements_allocate_nothing)
     drive_start(&d, T0);
     uint64_t probe = n_allocations;
     is_counting = true;
-    free(malloc(1));
+    void *volatile block = malloc(1); /* not optimised away */
     is_counting = false;
+    free(block);
     ck_assert_uint_eq(n_allocations, probe + 1); /* the shim does count */
     n_allocations = 0;
     is_counting = true;

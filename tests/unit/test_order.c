@@ -148,8 +148,14 @@ START_TEST(any_arrival_order_within_the_horizon_settles_the_same_bytes)
     for (int k = 0; k < 50; k++) {
         shuffle(&r, list, false);
         char *got = settle(list, hold_ms);
-        ck_assert_msg(strcmp(expected, got) == 0, "seed %d, order %d",
-                      71 + _i, k);
+        size_t at = 0;
+        while (expected[at] && expected[at] == got[at])
+            at++;
+        while (at > 0 && expected[at - 1] != '\n')
+            at--;
+        ck_assert_msg(strcmp(expected, got) == 0,
+                      "seed %d, order %d, byte %zu:\n%.250s\n%.250s", 71 + _i,
+                      k, at, expected + at, got + at);
         free(got);
     }
     free(expected);
