@@ -66,7 +66,8 @@ static void report_change(struct loading *l, int i, const char *what,
                           const char *remedy)
 {
     char text[1600];
-    snprintf(text, sizeof text, "--set %.200s: error: %.600s\n       = %.600s\n",
+    snprintf(text, sizeof text,
+             "--set %.200s: error: %.600s\n       = %.600s\n",
              l->changes[i].path, what, remedy);
     problems_append(l->problems, text);
 }

@@ -12,9 +12,9 @@
 #include <unistd.h>
 
 struct capture {
-    char **path;           /* files in order                              */
+    char **path; /* files in order                              */
     size_t n_paths, at_path;
-    uint8_t *bytes;        /* of the file being read, NULL = none         */
+    uint8_t *bytes; /* of the file being read, NULL = none         */
     size_t len, at;
     struct pcap_form form;
     struct capture_tally tally;
@@ -89,11 +89,11 @@ static status map(struct capture *c, const char *path, struct err *err)
                          "built yet, save it as pcap",
                          path);
     else if (c->form.linktype != PCAP_LINKTYPE_RAW)
-        result = err_set(err, ST_LATER,
-                         "%s: link type %u, %s, is not built yet; only RAW "
-                         "(101) is read",
-                         path, c->form.linktype,
-                         linktype_name(c->form.linktype));
+        result =
+            err_set(err, ST_LATER,
+                    "%s: link type %u, %s, is not built yet; only RAW "
+                    "(101) is read",
+                    path, c->form.linktype, linktype_name(c->form.linktype));
     c->tally.n_files++;
     c->tally.n_bytes += c->len;
 out:

@@ -13,8 +13,8 @@
 struct capture;
 
 /* A file, or a folder: its *.pcap files in order of their names. */
-status capture_open(struct capture **c, const char *path, struct err *err)
-    MUST_USE;
+status capture_open(struct capture **c, const char *path,
+                    struct err *err) MUST_USE;
 void capture_close(struct capture *c);
 
 /* The next datagram or control record; false at the end.  The payload lives
@@ -23,9 +23,9 @@ bool capture_next(struct capture *c, struct pcap_record *record);
 
 /* What was met so far. */
 struct capture_tally {
-    uint64_t n_records;    /* given                                        */
-    uint64_t n_skipped;    /* whole records that hold no UDP datagram      */
-    uint64_t torn_bytes;   /* behind the last whole record of its file     */
+    uint64_t n_records;  /* given                                        */
+    uint64_t n_skipped;  /* whole records that hold no UDP datagram      */
+    uint64_t torn_bytes; /* behind the last whole record of its file     */
     uint64_t n_files, n_bytes;
 };
 

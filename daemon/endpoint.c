@@ -40,8 +40,8 @@ int endpoint_bind(struct endpoint *e, int type, struct err *err)
     char name[80];
     int one = 1;
     endpoint_print(e, name, sizeof name);
-    int fd = socket(e->address.ss_family, type | SOCK_NONBLOCK | SOCK_CLOEXEC,
-                    0);
+    int fd =
+        socket(e->address.ss_family, type | SOCK_NONBLOCK | SOCK_CLOEXEC, 0);
     if (fd < 0) {
         err_set(err, ST_IO, "%s: no socket: %s", name, strerror(errno));
         return -1;

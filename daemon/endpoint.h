@@ -14,8 +14,8 @@ struct endpoint {
 };
 
 /* Numeric IPv4 or IPv6 ("127.0.0.1:8410", "[::1]:8410") or a host name. */
-status endpoint_parse(struct endpoint *e, const char *text, struct err *err)
-    MUST_USE;
+status endpoint_parse(struct endpoint *e, const char *text,
+                      struct err *err) MUST_USE;
 
 /* A bound, non-blocking socket of this type; -1 with *err. */
 int endpoint_bind(struct endpoint *e, int type, struct err *err);

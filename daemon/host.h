@@ -14,7 +14,7 @@
 enum { HOST_MAX = 64 };
 
 struct host_message {
-    int64_t t_ns;        /* realtime                                       */
+    int64_t t_ns; /* realtime                                       */
     char what[16];
     char text[600];
     uint64_t n;

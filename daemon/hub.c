@@ -6,37 +6,27 @@
 #include <stdlib.h>
 #include <string.h>
 
+#include "daemon/host.h"
 #include "daemon/line.h"
 #include "daemon/ring.h"
 #include "daemon/tcp.h"
 
 enum {
     RING_BYTES = 32 * 1024 * 1024,
-    BURST = 1024,        /* messages before the loop looks at sockets      */
+    BURST = 1024, /* messages before the loop looks at sockets      */
     TICK_MS = 10,
-    HOST_MAX = 64,
-    STOP_MS = 700        /* for the last deliveries                        */
-};
-
-#define INTEREST_OTHERS 4u /* anybody there at all: events, counts          */
-
-struct host_message {
-    int64_t t_ns;
-    char what[16], text[200];
-    uint64_t n;
+    STOP_MS = 700 /* for the last deliveries                        */
 };
 
 struct hub {
     const struct settings *settings;
     struct ring ring;
-    _Atomic unsigned interest;   /* streams anybody wants                  */
-    _Atomic bool is_asleep;      /* the hub has to be woken                */
+    _Atomic unsigned interest; /* bits of tcp_interest                   */
+    _Atomic bool is_asleep;    /* the hub has to be woken                */
     _Atomic bool is_stopping;
-    _Atomic uint64_t n_refused;  /* messages that found the ring full      */
+    _Atomic uint64_t n_refused; /* messages that found the ring full      */
 
-    pthread_mutex_t lock;        /* of the host messages                   */
-    struct host_message host[HOST_MAX];
-    int n_host;
+    struct host host;
 
     pthread_t thread;
     uv_loop_t loop;
@@ -44,18 +34,19 @@ struct hub {
     uv_timer_t timer;
     uv_prepare_t prepare;
     struct tcp *tcp;
+    struct pool pool;
     char *buffer;
     size_t buffer_size;
-    int64_t line_ns;             /* newest time that was said              */
-    int64_t stop_ms;             /* when to stop at the latest             */
+    int64_t stop_ms; /* when to stop at the latest             */
     bool has_said_bye;
-    char (*track)[RIG_ID_SIZE];  /* ids seen, in order; number = place in
-                                    `number`                               */
+    char (*track)[RIG_ID_SIZE]; /* ids seen, in order; number = place in
+                                   `number`                               */
     int *number;
     int n_tracks;
 };
 
-/* --- ingest's side ------------------------------------------------------------- */
+/* --- ingest's side
+ * ------------------------------------------------------------- */
 
 static void wake(struct hub *h)
 {
@@ -65,7 +56,8 @@ static void wake(struct hub *h)
 
 void hub_say(struct hub *h, const struct message *m)
 {
-    unsigned interest = atomic_load_explicit(&h->interest, memory_order_acquire);
+    unsigned interest =
+        atomic_load_explicit(&h->interest, memory_order_acquire);
     if (interest == 0)
         return;
     if (m->type == MESSAGE_ESTIMATE) {
@@ -80,25 +72,21 @@ void hub_say(struct hub *h, const struct message *m)
     }
     memcpy(at, m, m->bytes);
     ring_commit(&h->ring, m->bytes);
-    if (atomic_load_explicit(&h->is_asleep, memory_order_seq_cst))
+    /* Store, then load: without the fence the hub could fall asleep between
+     * the two and lie there until its next tick. */
+    atomic_thread_fence(memory_order_seq_cst);
+    if (atomic_load_explicit(&h->is_asleep, memory_order_relaxed))
         wake(h);
 }
 
 void hub_host(struct hub *h, const char *what, const char *text, uint64_t n)
 {
-    pthread_mutex_lock(&h->lock);
-    if (h->n_host < HOST_MAX) {
-        struct host_message *m = &h->host[h->n_host++];
-        m->t_ns = line_read().real_ns;
-        m->n = n;
-        strncpy(m->what, what, sizeof m->what - 1);
-        strncpy(m->text, text, sizeof m->text - 1);
-    }
-    pthread_mutex_unlock(&h->lock);
+    host_say(&h->host, what, text, n);
     uv_async_send(&h->wake);
 }
 
-/* --- the hub's own side ---------------------------------------------------------- */
+/* --- the hub's own side
+ * ---------------------------------------------------------- */
 
 static int64_t now_ms(void)
 {
@@ -132,7 +120,7 @@ static int number_of(struct hub *h, const char *id)
 static void offer(struct hub *h, struct tcp_offer *o)
 {
     if (o->bytes[WIRE_JSON] || o->bytes[WIRE_MSGPACK])
-        tcp_offer(h->tcp, o, now_ms());
+        tcp_offer(h->tcp, o);
     shared_drop(o->bytes[WIRE_JSON]);
     shared_drop(o->bytes[WIRE_MSGPACK]);
 }
@@ -144,7 +132,6 @@ static void publish(struct hub *h, const struct message *m)
         const struct estimate *e = (const void *)m;
         o.stream = e->stream;
         o.number = number_of(h, m->track);
-        h->line_ns = e->t_ns;
     }
     for (int form = 0; form < 2; form++) {
         if (!tcp_wants(h->tcp, (enum wire_form)form, o.stream, m->track))
@@ -152,29 +139,25 @@ static void publish(struct hub *h, const struct message *m)
         size_t len = wire_encode(&h->settings->rig, m, (enum wire_form)form,
                                  h->buffer, h->buffer_size);
         if (len > 0)
-            o.bytes[form] = shared_new(h->buffer, len);
+            o.bytes[form] = shared_new(&h->pool, h->buffer, len);
     }
     offer(h, &o);
 }
 
 static void publish_host(struct hub *h)
 {
-    pthread_mutex_lock(&h->lock);
-    struct host_message list[HOST_MAX];
-    int n = h->n_host;
-    memcpy(list, h->host, sizeof list);
-    memset(h->host, 0, sizeof h->host);
-    h->n_host = 0;
-    pthread_mutex_unlock(&h->lock);
+    struct host_message list[HOST_MAX + 1];
+    int n = host_take(&h->host, list);
     for (int i = 0; i < n && h->tcp; i++) {
         struct tcp_offer o = {.track = "", .number = -1, .stream = -1};
         for (int form = 0; form < 2; form++) {
-            size_t len = wire_encode_host(list[i].t_ns, list[i].what,
-                                          list[i].text, list[i].n,
-                                          (enum wire_form)form, h->buffer,
-                                          h->buffer_size);
+            if (!tcp_wants(h->tcp, (enum wire_form)form, -1, ""))
+                continue;
+            size_t len = wire_encode_host(
+                list[i].t_ns, list[i].what, list[i].text, list[i].n,
+                (enum wire_form)form, h->buffer, h->buffer_size);
             if (len > 0)
-                o.bytes[form] = shared_new(h->buffer, len);
+                o.bytes[form] = shared_new(&h->pool, h->buffer, len);
         }
         offer(h, &o);
     }
@@ -196,6 +179,9 @@ static bool drain(struct hub *h)
     uint64_t n = atomic_exchange(&h->n_refused, 0);
     if (n > 0 && h->tcp)
         tcp_skipped(h->tcp, n);
+    /* A backlog goes out burst by burst, or it would not fit the queues. */
+    if (m && h->tcp)
+        tcp_flush(h->tcp);
     return m != NULL;
 }
 
@@ -205,7 +191,7 @@ static void on_wake(uv_async_t *async)
     publish_host(h);
     drain(h);
     if (h->tcp)
-        tcp_tick(h->tcp, now_ms(), h->line_ns);
+        tcp_tick(h->tcp, now_ms());
 }
 
 /* Before the loop sleeps: leave the flag up, then look once more, so that a
@@ -240,7 +226,7 @@ static void on_timer(uv_timer_t *timer)
     publish_host(h);
     drain(h);
     if (h->tcp)
-        tcp_tick(h->tcp, now_ms(), h->line_ns);
+        tcp_tick(h->tcp, now_ms());
     if (!atomic_load(&h->is_stopping))
         return;
     if (h->stop_ms == 0)
@@ -263,14 +249,15 @@ static void *run_loop(void *arg)
     return NULL;
 }
 
-/* --- for its connections ----------------------------------------------------------- */
+/* --- for its connections
+ * ----------------------------------------------------------- */
 
 static struct shared *description(void *ctx, enum wire_form form)
 {
     struct hub *h = ctx;
     size_t len = wire_encode_description(&h->settings->rig, ROPEWALK_BUILD,
                                          form, h->buffer, h->buffer_size);
-    return len > 0 ? shared_new(h->buffer, len) : NULL;
+    return len > 0 ? shared_new(&h->pool, h->buffer, len) : NULL;
 }
 
 static void interest(void *ctx)
@@ -278,17 +265,17 @@ static void interest(void *ctx)
     struct hub *h = ctx;
     if (!h->tcp)
         return;
-    unsigned bits = tcp_interest(h->tcp);
-    if (tcp_n_subscribers(h->tcp) > 0)
-        bits |= INTEREST_OTHERS;
-    atomic_store_explicit(&h->interest, bits, memory_order_release);
+    atomic_store_explicit(&h->interest, tcp_interest(h->tcp),
+                          memory_order_release);
 }
 
-/* --- life ---------------------------------------------------------------------------- */
+/* --- life
+ * ----------------------------------------------------------------------------
+ */
 
 static status set_up(struct hub *h, struct endpoint *at, struct err *err)
 {
-    struct tcp_host host = {description, interest, h};
+    struct tcp_host host = {description, interest, &h->pool, h};
     const struct settings *s = h->settings;
     h->buffer_size = wire_message_bound(&s->rig);
     h->buffer = malloc(h->buffer_size);
@@ -300,8 +287,8 @@ static status set_up(struct hub *h, struct endpoint *at, struct err *err)
     if (s->tcp[0]) {
         status st = endpoint_parse(at, s->tcp, err);
         if (st == ST_OK)
-            st = tcp_start(&h->tcp, &h->loop, at, s->max_subscribers, host,
-                           err);
+            st =
+                tcp_start(&h->tcp, &h->loop, at, s->max_subscribers, host, err);
         if (st != ST_OK)
             return st;
     }
@@ -314,8 +301,9 @@ static void fini(struct hub *h)
 {
     uv_run(&h->loop, UV_RUN_DEFAULT); /* what is closing closes */
     uv_loop_close(&h->loop);
-    pthread_mutex_destroy(&h->lock);
+    host_fini(&h->host);
     ring_fini(&h->ring);
+    pool_fini(&h->pool);
     free(h->buffer);
     free(h->track);
     free(h->number);
@@ -330,7 +318,7 @@ status hub_start(struct hub **out, const struct settings *s,
     if (!h)
         return err_set(err, ST_NOMEM, "out of memory");
     h->settings = s;
-    pthread_mutex_init(&h->lock, NULL);
+    host_init(&h->host);
     uv_loop_init(&h->loop);
     uv_async_init(&h->loop, &h->wake, on_wake);
     uv_timer_init(&h->loop, &h->timer);

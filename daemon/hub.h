@@ -1,4 +1,5 @@
-/* hub.h - from the run to everybody who listens: a thread and a loop of its own.
+/* hub.h - from the run to everybody who listens: a thread and a loop of its
+ * own.
  *
  * Ingest hands messages over through a bounded ring and never waits.  The hub
  * encodes each message once per form and shares the bytes; whoever is slow

@@ -23,25 +23,25 @@ struct ingest {
     struct run *run;
     void *memory;
     struct receive *receive;
-    struct sender own;           /* our address, for the capture           */
+    struct sender own; /* our address, for the capture           */
     uv_timer_t timer;
     struct line line;
-    int64_t advanced_ns;         /* line that time is known to have reached */
-    int64_t recorded_ns;         /* line of the last record                */
-    int64_t told_ns;             /* monotonic, of the last look at drops   */
+    int64_t advanced_ns; /* line that time is known to have reached */
+    int64_t recorded_ns; /* line of the last record                */
+    int64_t told_ns;     /* monotonic, of the last look at drops   */
     uint64_t n_dropped;
     struct log_site refusals, drops, full;
 };
 
-/* --- what comes in -------------------------------------------------------------- */
+/* --- what comes in
+ * -------------------------------------------------------------- */
 
 static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
                         const struct sender *from, const uint8_t *bytes,
                         size_t len)
 {
     struct ingest *in = ctx;
-    int64_t a_ns =
-        run_arrival(in->run, line_arrival(&in->line, now, stamp_ns));
+    int64_t a_ns = run_arrival(in->run, line_arrival(&in->line, now, stamp_ns));
     if (in->recorder &&
         !recorder_put(in->recorder, a_ns, from, &in->own, bytes, len))
         log_often(&in->full, "the capture lags behind: records left out");
@@ -76,7 +76,8 @@ static void say(void *ctx, const struct message *m)
     hub_say(in->hub, m);
 }
 
-/* --- what only the host knows ------------------------------------------------------ */
+/* --- what only the host knows
+ * ------------------------------------------------------ */
 
 static void look_at_drops(struct ingest *in)
 {
@@ -129,7 +130,9 @@ static void on_timer(uv_timer_t *timer)
     look_at_clock(in);
 }
 
-/* --- life ---------------------------------------------------------------------------- */
+/* --- life
+ * ----------------------------------------------------------------------------
+ */
 
 static status build_run(struct ingest *in, struct err *err)
 {
@@ -141,8 +144,9 @@ static status build_run(struct ingest *in, struct err *err)
                        "%zu bytes for the run are not to be had; lower limits "
                        "or rates",
                        bytes);
-    in->run = run_init(in->memory, bytes, rig,
-                       (struct message_sink){say, in});
+    /* Touched now: the first measurements shall not wait for pages. */
+    memset(in->memory, 0, bytes);
+    in->run = run_init(in->memory, bytes, rig, (struct message_sink){say, in});
     return ST_OK;
 }
 
@@ -181,14 +185,23 @@ status ingest_start(struct ingest **out, uv_loop_t *loop,
     return ST_OK;
 }
 
+/* Fusion has ended, so this one may wait a little for room in the ring. */
+static void record_stop(struct ingest *in, int64_t end_ns)
+{
+    for (int i = 0; in->recorder && i < 200; i++) {
+        if (recorder_control(in->recorder, CONTROL_STOP, end_ns, 0, ""))
+            return;
+        uv_sleep(1);
+    }
+}
+
 void ingest_finish(struct ingest *in)
 {
     uv_timer_stop(&in->timer);
     receive_drain(in->receive);
     look_at_drops(in);
     int64_t end_ns = run_arrival(in->run, line_now(&in->line, line_read()));
-    if (in->recorder)
-        recorder_control(in->recorder, CONTROL_STOP, end_ns, 0, "");
+    record_stop(in, end_ns);
     run_stop(in->run, end_ns);
 }
 

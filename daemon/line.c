@@ -3,9 +3,9 @@
 
 #include <time.h>
 
-#define SECOND_NS    1000000000
-#define OFF_MAX_NS   100000000
-#define OFF_FOR_NS   2000000000
+#define SECOND_NS  1000000000
+#define OFF_MAX_NS 100000000
+#define OFF_FOR_NS 2000000000
 
 static int64_t read_clock(clockid_t id)
 {

@@ -17,7 +17,7 @@ struct line_reading {
 
 struct line {
     int64_t real0_ns, mono0_ns;
-    int64_t off_since_ns;   /* monotonic; 0 = the clocks agree              */
+    int64_t off_since_ns; /* monotonic; 0 = the clocks agree              */
 };
 
 /* The clocks of this host. */

@@ -35,10 +35,10 @@ static size_t quote(char *out, size_t size, const char *text)
 
 /* A reader of our stderr that stands still must not hold up the fusion: a
  * pipe that polls writable takes a whole line of this size at once. */
-static bool put(const char *line, size_t len)
+static bool put(const char *line, size_t len, int wait_ms)
 {
     struct pollfd out = {STDERR_FILENO, POLLOUT, 0};
-    if (poll(&out, 1, 0) != 1 || !(out.revents & POLLOUT))
+    if (poll(&out, 1, wait_ms) != 1 || !(out.revents & POLLOUT))
         return false;
     return write(STDERR_FILENO, line, len) == (ssize_t)len;
 }
@@ -60,12 +60,21 @@ static bool say(int priority, const char *level, const char *fmt, va_list args)
         clock_gettime(CLOCK_REALTIME, &now);
         gmtime_r(&now.tv_sec, &utc);
         strftime(stamp, sizeof stamp, "%Y-%m-%dT%H:%M:%S", &utc);
-        n = (size_t)snprintf(line, sizeof line, "t=%s.%03ldZ level=%s msg=",
-                             stamp, now.tv_nsec / 1000000, level);
+        n = (size_t)snprintf(line, sizeof line,
+                             "t=%s.%03ldZ level=%s msg=", stamp,
+                             now.tv_nsec / 1000000, level);
     }
     n += quote(line + n, sizeof line - n - 1, text);
     line[n++] = '\n';
-    return put(line, n);
+    return put(line, n, 0);
+}
+
+bool log_text(const char *text, size_t len)
+{
+    for (size_t at = 0; at < len; at += LINE_SIZE)
+        if (!put(text + at, len - at < LINE_SIZE ? len - at : LINE_SIZE, 100))
+            return false;
+    return true;
 }
 
 void log_info(const char *fmt, ...)

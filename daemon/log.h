@@ -11,10 +11,16 @@
 #ifndef DAEMON_LOG_H
 #define DAEMON_LOG_H
 
+#include <stdbool.h>
+#include <stddef.h>
 #include <stdint.h>
 
 void log_info(const char *fmt, ...) __attribute__((format(printf, 1, 2)));
 void log_warn(const char *fmt, ...) __attribute__((format(printf, 1, 2)));
+
+/* Bytes as they are, at the end of a run: waits 100 ms at most for a reader
+ * that stands still, then gives up and returns false. */
+bool log_text(const char *text, size_t len);
 
 /* One per site, static and zero at first. */
 struct log_site {

@@ -119,8 +119,8 @@ int main(int argc, char **argv)
         return EXIT_UNAVAILABLE;
     }
     problems_init(&problems);
-    status st = settings_load(&settings, o.rig, o.change, o.n_changes,
-                              &problems);
+    status st =
+        settings_load(&settings, o.rig, o.change, o.n_changes, &problems);
     if (st != ST_OK) {
         fputs(problems.text ? problems.text : "", stderr);
         code = EXIT_BAD;

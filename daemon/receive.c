@@ -14,7 +14,7 @@
 #define UDP_GRO 104
 #endif
 
-enum { CONTROL_SIZE = 256 };
+enum { CONTROL_SIZE = 256, DRAIN_BATCHES = 1024 };
 
 struct receive {
     uv_poll_t poll;
@@ -26,6 +26,7 @@ struct receive {
     struct sockaddr_storage from[RECEIVE_SLOTS];
     char control[RECEIVE_SLOTS][CONTROL_SIZE];
     uint8_t *slots;
+    uint32_t drops_seen; /* the kernel's own counter, which wraps        */
 };
 
 /* What stands beside a datagram. */
@@ -84,6 +85,8 @@ static bool take_batch(struct receive *r)
     if (n <= 0) {
         if (n < 0 && (errno == EAGAIN || errno == EWOULDBLOCK))
             r->taker.empty(r->taker.ctx, now);
+        else if (n < 0 && errno != EINTR)
+            r->counts.n_errors++;
         return false;
     }
     for (int i = 0; i < n; i++)
@@ -106,16 +109,19 @@ static void on_readable(uv_poll_t *poll, int result, int events)
     receive_look(poll->data);
 }
 
+/* Whoever sends without a pause must not keep the daemon from stopping: what
+ * lay in the buffer fits the bound, what comes meanwhile need not. */
 void receive_drain(struct receive *r)
 {
-    while (take_batch(r)) {
-    }
+    for (int i = 0; i < DRAIN_BATCHES; i++)
+        if (!take_batch(r))
+            break;
 }
 
 static status set_up(struct receive *r, int64_t buffer_bytes, struct err *err)
 {
-    int one = 1, size = (int)(buffer_bytes > INT32_MAX ? INT32_MAX
-                                                       : buffer_bytes);
+    int one = 1,
+        size = (int)(buffer_bytes > INT32_MAX ? INT32_MAX : buffer_bytes);
     /* The privileged form goes beyond the system's limit; the plain one is
      * clipped to it, which receive_buffer tells. */
     if (setsockopt(r->fd, SOL_SOCKET, SO_RCVBUFFORCE, &size, sizeof size) != 0)
@@ -175,8 +181,11 @@ struct receive_counts receive_counts(struct receive *r)
 {
     uint32_t info[SK_MEMINFO_VARS] = {0};
     socklen_t len = sizeof info;
-    if (getsockopt(r->fd, SOL_SOCKET, SO_MEMINFO, info, &len) == 0)
-        r->counts.n_dropped = info[SK_MEMINFO_DROPS];
+    if (getsockopt(r->fd, SOL_SOCKET, SO_MEMINFO, info, &len) == 0) {
+        uint32_t more = info[SK_MEMINFO_DROPS] - r->drops_seen;
+        r->counts.n_dropped += more;
+        r->drops_seen += more;
+    }
     return r->counts;
 }
 

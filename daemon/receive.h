@@ -33,9 +33,10 @@ struct receive_taker {
 };
 
 struct receive_counts {
-    uint64_t n_cut;        /* longer than a slot                           */
-    uint64_t n_dropped;    /* by the kernel, socket buffer full            */
-    uint64_t n_merged;     /* merged buffers split                         */
+    uint64_t n_cut;     /* longer than a slot                           */
+    uint64_t n_dropped; /* by the kernel, socket buffer full            */
+    uint64_t n_merged;  /* merged buffers split                         */
+    uint64_t n_errors;  /* reads that failed otherwise                  */
 };
 
 struct receive;
@@ -49,7 +50,7 @@ status receive_start(struct receive **r, uv_loop_t *loop, struct endpoint *at,
  * and so lets time pass. */
 void receive_look(struct receive *r);
 
-/* Takes what is in the socket, until it is empty. */
+/* Takes what is in the socket, until it is empty, but not for ever. */
 void receive_drain(struct receive *r);
 
 /* Counts; asks the kernel for its drops. */

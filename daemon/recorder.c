@@ -19,6 +19,7 @@
 #define RING_SIZE   (16 * 1024 * 1024)
 #define CONTROL_MAX 1024
 #define SECOND_NS   1000000000
+#define REMIND_NS   (30ll * SECOND_NS) /* of a capture that stands still   */
 
 struct recorder {
     const struct settings *settings;
@@ -26,15 +27,15 @@ struct recorder {
     struct ring ring;
     pthread_t thread;
     _Atomic bool is_stopping;
-    _Atomic uint64_t n_refused;   /* records that found the ring full      */
+    _Atomic uint64_t n_refused; /* records that found the ring full      */
 
     /* the writer's own */
     struct segment segment;
     int64_t start_ns, line_ns;
     int number;
-    uint64_t n_lost;              /* since the last gap record             */
-    int64_t synced_ns, retried_ns, checked_ns; /* monotonic                */
-    struct log_site site;
+    uint64_t n_lost; /* since the last gap record             */
+    int64_t synced_ns, retried_ns, checked_ns, gap_ns; /* monotonic        */
+    int64_t told_ns; /* of the last line in the log           */
 };
 
 static int64_t mono_ns(void)
@@ -44,7 +45,8 @@ static int64_t mono_ns(void)
     return (int64_t)t.tv_sec * SECOND_NS + t.tv_nsec;
 }
 
-/* --- ingest's side ------------------------------------------------------------ */
+/* --- ingest's side
+ * ------------------------------------------------------------ */
 
 /* In the ring a record has its arrival in front, for the segment's age. */
 enum { FRONT = 8 };
@@ -80,13 +82,13 @@ bool recorder_control(struct recorder *r, enum control_kind kind,
     return true;
 }
 
-/* --- the writer's side ---------------------------------------------------------- */
+/* --- the writer's side
+ * ---------------------------------------------------------- */
 
 static bool is_below_floor(struct recorder *r)
 {
     struct statvfs fs;
-    if (r->settings->floor_bytes <= 0 ||
-        statvfs(r->settings->folder, &fs) != 0)
+    if (r->settings->floor_bytes <= 0 || statvfs(r->settings->folder, &fs) != 0)
         return false;
     return (double)fs.f_bavail * (double)fs.f_frsize <
            (double)r->settings->floor_bytes;
@@ -95,11 +97,17 @@ static bool is_below_floor(struct recorder *r)
 /* The segment is given up; a new one is tried once a second. */
 static void give_up(struct recorder *r, const struct err *err)
 {
-    log_often(&r->site, "capture interrupted, fusion goes on: %s", err->text);
+    char text[sizeof err->text + 64];
     r->n_lost += r->segment.fd >= 0 ? r->segment.n_buffered : 0;
     segment_close(&r->segment);
     r->retried_ns = mono_ns();
-    r->watch.gap(r->watch.ctx, err->text, r->n_lost);
+    snprintf(text, sizeof text, "capture interrupted, fusion goes on: %s",
+             err->text);
+    r->watch.gap(r->watch.ctx, text, r->n_lost);
+    if (r->retried_ns - r->told_ns < REMIND_NS && r->told_ns != 0)
+        return;
+    log_warn("%s", text);
+    r->told_ns = r->retried_ns;
 }
 
 static void put_gap(struct recorder *r)
@@ -116,8 +124,12 @@ static void put_gap(struct recorder *r)
         give_up(r, &err);
         return;
     }
-    r->watch.gap(r->watch.ctx, "records missing from the capture", n);
+    r->watch.gap(r->watch.ctx, "the capture goes on; records missing from it",
+                 n);
+    log_warn("the capture goes on in %s; records missing from it: %llu",
+             r->segment.path, (unsigned long long)n);
     r->n_lost = 0;
+    r->told_ns = 0;
 }
 
 static bool open_next(struct recorder *r)
@@ -130,8 +142,8 @@ static bool open_next(struct recorder *r)
         give_up(r, &err);
         return false;
     }
-    status st = segment_open(&r->segment, r->settings, r->start_ns,
-                             ++r->number, r->line_ns, &err);
+    status st = segment_open(&r->segment, r->settings, r->start_ns, &r->number,
+                             r->line_ns, &err);
     if (st != ST_OK) {
         give_up(r, &err);
         return false;
@@ -174,8 +186,13 @@ static void keep(struct recorder *r, int64_t now_ns)
     status st = ST_OK;
     if (r->segment.fd < 0)
         return;
-    if (atomic_load(&r->n_refused) > 0)
+    if (atomic_load(&r->n_refused) > 0 &&
+        (now_ns - r->gap_ns >= SECOND_NS || atomic_load(&r->is_stopping))) {
+        r->gap_ns = now_ns;
         put_gap(r);
+    }
+    if (r->segment.fd < 0)
+        return;
     if (r->settings->sync == SYNC_ALWAYS ||
         (r->settings->sync == SYNC_EVERY_SECOND &&
          now_ns - r->synced_ns >= SECOND_NS)) {
@@ -218,7 +235,8 @@ static void *write_records(void *arg)
     return NULL;
 }
 
-/* --- life ------------------------------------------------------------------------ */
+/* --- life
+ * ------------------------------------------------------------------------ */
 
 /* Makes the folder and those above it. */
 static bool make_folder(const char *path)
@@ -254,7 +272,7 @@ status recorder_start(struct recorder **out, const struct settings *s,
                      s->folder, strerror(errno));
         goto out;
     }
-    st = segment_open(&r->segment, s, line_ns, ++r->number, line_ns, err);
+    st = segment_open(&r->segment, s, line_ns, &r->number, line_ns, err);
     if (st != ST_OK)
         goto out;
     st = ring_init(&r->ring, RING_SIZE);
@@ -302,7 +320,7 @@ double recorder_lasts_s(const struct settings *s, double bytes_per_s)
     struct statvfs fs;
     if (statvfs(s->folder, &fs) != 0 || bytes_per_s <= 0)
         return -1;
-    double room = (double)fs.f_bavail * (double)fs.f_frsize -
-                  (double)s->floor_bytes;
+    double room =
+        (double)fs.f_bavail * (double)fs.f_frsize - (double)s->floor_bytes;
     return room > 0 ? room / bytes_per_s : 0;
 }

@@ -3,7 +3,6 @@
 #include <cjson/cJSON.h>
 #include <string.h>
 
-#include "core/wire/decode.h"
 #include "daemon/subscriber.h"
 
 struct request request_default(void)
@@ -30,8 +29,7 @@ static status wrong(struct err *err, const char *key, const char *remedy)
     return err_set(err, ST_SCHEMA, "request: %s: %s", key, remedy);
 }
 
-static status take_tracks(struct request *r, const cJSON *list,
-                          struct err *err)
+static status take_tracks(struct request *r, const cJSON *list, struct err *err)
 {
     const cJSON *item;
     if (!cJSON_IsArray(list))
@@ -41,8 +39,9 @@ static status take_tracks(struct request *r, const cJSON *list,
         const char *id = cJSON_GetStringValue(item);
         size_t n = id ? strlen(id) : 0;
         if (n == 0 || n >= RIG_ID_SIZE)
-            return wrong(err, "tracks", "an id is a text of at most 63 "
-                                        "characters");
+            return wrong(err, "tracks",
+                         "an id is a text of at most 63 "
+                         "characters");
         if (r->n_tracks == REQUEST_TRACKS_MAX)
             return wrong(err, "tracks", "at most 32 ids; use a prefix*");
         memcpy(r->track[r->n_tracks++], id, n + 1);
@@ -84,9 +83,9 @@ static status take(struct request *r, const cJSON *item, struct err *err)
     if (strcmp(key, "rate") == 0) {
         if (!cJSON_IsNumber(item) ||
             !(item->valuedouble > 0 && item->valuedouble <= 1e6))
-            return wrong(err, "rate", "estimates per second and track, above 0");
+            return wrong(err, "rate",
+                         "estimates per second and track, above 0");
         r->rate_hz = item->valuedouble;
-        r->wants_every = false;
         return ST_OK;
     }
     if (!word)
@@ -101,13 +100,22 @@ static status take(struct request *r, const cJSON *item, struct err *err)
                  "no such key; tracks, stream, rate, mode and form are known");
 }
 
+/* The parser stops behind the object and takes what follows for granted. */
+static bool is_blank(const char *at, const char *end)
+{
+    while (at < end && strchr(" \t\r", *at) != NULL && *at)
+        at++;
+    return at == end;
+}
+
 status request_parse(struct request *r, const char *line, size_t len,
                      struct err *err)
 {
-    cJSON *root = cJSON_ParseWithLength(line, len);
+    const char *end = line;
+    cJSON *root = cJSON_ParseWithLengthOpts(line, len, &end, false);
     status st = ST_OK;
     *r = request_default();
-    if (!cJSON_IsObject(root)) {
+    if (!cJSON_IsObject(root) || !is_blank(end, line + len)) {
         st = err_set(err, ST_PARSE, "request: not one JSON object in one line");
         goto out;
     }
@@ -118,9 +126,8 @@ status request_parse(struct request *r, const char *line, size_t len,
         if (st != ST_OK)
             goto out;
     }
-    /* A rate asked for with mode every: the rate thins, it does not skip. */
-    if (r->wants_every)
-        r->rate_hz = 0;
+    if (r->rate_hz > 0) /* a rate thins out, whatever the mode */
+        r->wants_every = false;
 out:
     cJSON_Delete(root);
     return st;

@@ -17,11 +17,11 @@
 
 struct ring {
     uint8_t *bytes;
-    size_t size;                       /* a power of two                   */
-    _Alignas(64) _Atomic size_t head;  /* written up to here               */
-    size_t tail_seen;                  /* writer's copy of tail            */
-    _Alignas(64) _Atomic size_t tail;  /* read up to here                  */
-    size_t head_seen;                  /* reader's copy of head            */
+    size_t size;                      /* a power of two                   */
+    _Alignas(64) _Atomic size_t head; /* written up to here               */
+    size_t tail_seen;                 /* writer's copy of tail            */
+    _Alignas(64) _Atomic size_t tail; /* read up to here                  */
+    size_t head_seen;                 /* reader's copy of head            */
 };
 
 /* `size` is rounded up to a power of two; the memory is touched at once. */

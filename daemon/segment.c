@@ -11,6 +11,8 @@
 
 #include "core/wire/pcap.h"
 
+enum { NUMBER_MAX = 999999 }; /* six digits: names sort as they were made */
+
 static status say(struct err *err, const char *path, const char *what)
 {
     return err_set(err, ST_IO, "%s: cannot %s: %s", path, what,
@@ -53,19 +55,23 @@ static void copy_rig(const struct segment *g, const struct settings *s)
 }
 
 status segment_open(struct segment *g, const struct settings *s,
-                    int64_t start_ns, int number, int64_t line_ns,
+                    int64_t start_ns, int *number, int64_t line_ns,
                     struct err *err)
 {
     char stamp[32];
     time_t second = (time_t)(start_ns / 1000000000);
     struct tm utc;
+    int next = *number;
     gmtime_r(&second, &utc);
     strftime(stamp, sizeof stamp, "%Y%m%dT%H%M%SZ", &utc);
-    snprintf(g->path, sizeof g->path, "%s/%s-%04d.pcap", s->folder, stamp,
-             number);
-    g->fd = open(g->path, O_WRONLY | O_CREAT | O_EXCL | O_CLOEXEC, 0644);
+    do {
+        snprintf(g->path, sizeof g->path, "%s/%s-%06d.pcap", s->folder, stamp,
+                 ++next);
+        g->fd = open(g->path, O_WRONLY | O_CREAT | O_EXCL | O_CLOEXEC, 0644);
+    } while (g->fd < 0 && errno == EEXIST && next < NUMBER_MAX);
     if (g->fd < 0)
         return say(err, g->path, "be made");
+    *number = next;
     g->written = 0;
     g->begun_ns = line_ns;
     g->is_dirty = false;

@@ -8,19 +8,20 @@
 enum { SEGMENT_BUFFER = 256 * 1024 };
 
 struct segment {
-    int fd;                 /* -1: none open                               */
+    int fd; /* -1: none open                               */
     char path[SETTINGS_PATH_SIZE + 64];
-    uint64_t written;       /* bytes of the file                           */
-    int64_t begun_ns;       /* arrival line                                */
-    size_t used;            /* of the buffer                               */
-    uint64_t n_buffered;    /* records in it                               */
-    bool is_dirty;          /* written since the last sync                 */
+    uint64_t written;    /* bytes of the file                           */
+    int64_t begun_ns;    /* arrival line                                */
+    size_t used;         /* of the buffer                               */
+    uint64_t n_buffered; /* records in it                               */
+    bool is_dirty;       /* written since the last sync                 */
     uint8_t buffer[SEGMENT_BUFFER];
 };
 
-/* Begins FOLDER/<start>-<number>.pcap and its rig copy beside it. */
+/* Begins FOLDER/<start>-<number>.pcap and its rig copy beside it; the number
+ * is the next free one after *number, which it becomes. */
 status segment_open(struct segment *g, const struct settings *s,
-                    int64_t start_ns, int number, int64_t line_ns,
+                    int64_t start_ns, int *number, int64_t line_ns,
                     struct err *err) MUST_USE;
 
 /* Buffers one record; writes when the buffer is full. */

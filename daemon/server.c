@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "daemon/server.h"
 
+#include <cjson/cJSON.h>
+#include <errno.h>
 #include <inttypes.h>
 #include <signal.h>
 #include <stdio.h>
@@ -18,7 +20,7 @@ struct server {
     const struct server_options *options;
     uv_loop_t loop;
     uv_signal_t term, interrupt;
-    bool has_signals;
+    bool is_stopping;
     struct line_reading begun;
     struct hub *hub;
     struct recorder *recorder;
@@ -27,10 +29,49 @@ struct server {
     int started;
 };
 
-/* --- components -------------------------------------------------------------------- */
+/* --- components
+ * -------------------------------------------------------------------- */
 
 static status signals_start(struct server *s, struct err *err);
 static void signals_close(struct server *s);
+
+static bool is_clock_set(void)
+{
+    struct timex t = {0};
+    return adjtimex(&t) != TIME_ERROR && !(t.status & STA_UNSYNC);
+}
+
+/* Waits for a synchronised clock where senders elsewhere stamp by theirs; a
+ * signal ends the wait. */
+static status clock_start(struct server *s, struct err *err)
+{
+    struct endpoint at;
+    (void)err;
+    if (endpoint_parse(&at, s->settings->udp, NULL) != ST_OK ||
+        endpoint_is_loopback(&at) || is_clock_set())
+        return ST_OK;
+    int64_t until_ns = line_read().mono_ns + s->settings->clock_wait_ns;
+    log_info("waiting up to %.0f s (clock.wait) for a synchronised clock; a "
+             "signal ends the wait",
+             (double)s->settings->clock_wait_ns * 1e-9);
+    uv_ref((uv_handle_t *)&s->term); /* a loop without references looks at
+                                        nothing */
+    while (!s->is_stopping && !is_clock_set() &&
+           line_read().mono_ns < until_ns) {
+        uv_sleep(50);
+        uv_run(&s->loop, UV_RUN_NOWAIT);
+    }
+    uv_unref((uv_handle_t *)&s->term);
+    if (!is_clock_set())
+        log_warn("the host's clock is not synchronised: going on without; "
+                 "stamps of other machines may not fit");
+    return ST_OK;
+}
+
+static void clock_close(struct server *s)
+{
+    (void)s;
+}
 
 static status publish_start(struct server *s, struct err *err)
 {
@@ -51,6 +92,7 @@ static void on_gap(void *ctx, const char *why, uint64_t n)
 
 static status record_start(struct server *s, struct err *err)
 {
+    s->begun = line_read(); /* the arrival line begins here */
     if (!s->settings->folder[0])
         return ST_OK;
     return recorder_start(&s->recorder, s->settings, s->begun.real_ns,
@@ -92,6 +134,7 @@ static const struct component {
     status (*start)(struct server *s, struct err *err);
     void (*close)(struct server *s);
 } components[] = {{signals_start, signals_close},
+                  {clock_start, clock_close},
                   {publish_start, publish_close},
                   {record_start, record_close},
                   {receive_begin, receive_end}};
@@ -108,7 +151,8 @@ static void close_components(struct server *s)
 
 static status start_components(struct server *s, struct err *err)
 {
-    for (s->started = 0; s->started < N_COMPONENTS; s->started++) {
+    for (s->started = 0; s->started < N_COMPONENTS && !s->is_stopping;
+         s->started++) {
         status st = components[s->started].start(s, err);
         if (st != ST_OK)
             return st;
@@ -116,11 +160,13 @@ static status start_components(struct server *s, struct err *err)
     return ST_OK;
 }
 
-/* --- signals ------------------------------------------------------------------------- */
+/* --- signals
+ * ------------------------------------------------------------------------- */
 
 static void on_signal(uv_signal_t *handle, int number)
 {
     struct server *s = handle->data;
+    s->is_stopping = true;
     log_info("signal %d: stopping; a second one ends at once", number);
     signal(number, SIG_DFL);
     uv_signal_stop(&s->term);
@@ -150,7 +196,8 @@ static void signals_close(struct server *s)
     uv_close((uv_handle_t *)&s->interrupt, NULL);
 }
 
-/* --- what the operator is told ---------------------------------------------------------- */
+/* --- what the operator is told
+ * ---------------------------------------------------------- */
 
 static double declared_rate(const struct rig *rig)
 {
@@ -197,6 +244,11 @@ static void tell_capture(const struct server *s)
     }
     double bytes_per_s = declared_rate(&s->settings->rig) * 130;
     double lasts_s = recorder_lasts_s(s->settings, bytes_per_s);
+    if (lasts_s < 0) {
+        log_info("capture in %s: how long the disk lasts is not known",
+                 recorder_folder(s->recorder));
+        return;
+    }
     log_info("capture in %s: the disk lasts %.1f h at the declared rates, "
              "down to capture.floor",
              recorder_folder(s->recorder), lasts_s / 3600);
@@ -209,16 +261,25 @@ static status write_ports(const struct server *s, struct err *err)
     if (!path)
         return ST_OK;
     snprintf(part, sizeof part, "%s.part", path);
+    cJSON *ports = cJSON_CreateObject();
+    cJSON_AddNumberToObject(ports, "udp", endpoint_port(&s->udp));
+    cJSON_AddNumberToObject(ports, "tcp",
+                            s->settings->tcp[0] ? endpoint_port(&s->tcp) : 0);
+    cJSON_AddNumberToObject(ports, "pid", (double)getpid());
+    cJSON_AddStringToObject(ports, "capture",
+                            s->recorder ? recorder_folder(s->recorder) : "");
+    char *text = cJSON_PrintUnformatted(ports);
+    cJSON_Delete(ports);
     FILE *f = fopen(part, "w");
-    if (!f)
-        return err_set(err, ST_IO, "--port-file %s: cannot be written", path);
-    fprintf(f, "{\"udp\":%d,\"tcp\":%d,\"pid\":%d,\"capture\":\"%s\"}\n",
-            endpoint_port(&s->udp),
-            s->settings->tcp[0] ? endpoint_port(&s->tcp) : 0, (int)getpid(),
-            s->recorder ? recorder_folder(s->recorder) : "");
-    fclose(f);
+    bool is_good = f && text && fprintf(f, "%s\n", text) > 0;
+    is_good = f && fclose(f) == 0 && is_good;
+    cJSON_free(text);
+    if (!is_good)
+        return err_set(err, ST_IO, "--port-file %s: cannot be written: %s",
+                       path, strerror(errno));
     if (rename(part, path) != 0)
-        return err_set(err, ST_IO, "--port-file %s: cannot be written", path);
+        return err_set(err, ST_IO, "--port-file %s: cannot be written: %s",
+                       path, strerror(errno));
     return ST_OK;
 }
 
@@ -232,60 +293,35 @@ static void log_summary(struct server *s)
     if (!text)
         return;
     struct receive_counts c = receive_counts(ingest_receive(s->ingest));
-    log_info("summary follows; dropped by the kernel %" PRIu64 ", cut %" PRIu64,
-             c.n_dropped, c.n_cut);
-    fwrite(text, 1, wire_summary_begin(rig, run_counts(run), text, size),
-           stderr);
-    for (int i = 0; run_track_summary(run, i, &track); i++)
-        fwrite(text, 1, wire_summary_track(rig, &track, i == 0, text, size),
-               stderr);
-    fwrite(text, 1, wire_summary_end(text, size), stderr);
+    log_info("summary follows; dropped by the kernel %" PRIu64 ", cut %" PRIu64
+             ", failed reads %" PRIu64,
+             c.n_dropped, c.n_cut, c.n_errors);
+    bool is_read =
+        log_text(text, wire_summary_begin(rig, run_counts(run), text, size));
+    for (int i = 0; is_read && run_track_summary(run, i, &track); i++)
+        is_read =
+            log_text(text, wire_summary_track(rig, &track, i == 0, text, size));
+    if (is_read)
+        log_text(text, wire_summary_end(text, size));
     free(text);
-}
-
-/* Waits for a synchronised clock where senders elsewhere stamp by theirs. */
-static void wait_for_clock(struct server *s)
-{
-    struct endpoint at;
-    struct timex t = {0};
-    if (endpoint_parse(&at, s->settings->udp, NULL) != ST_OK ||
-        endpoint_is_loopback(&at))
-        return;
-    int64_t until_ns = line_read().mono_ns + s->settings->clock_wait_ns;
-    bool has_said = false;
-    while (adjtimex(&t) == TIME_ERROR || (t.status & STA_UNSYNC)) {
-        if (line_read().mono_ns >= until_ns) {
-            log_warn("the host's clock is not synchronised: going on without; "
-                     "stamps of other machines may not fit");
-            return;
-        }
-        if (!has_said)
-            log_info("waiting up to %.0f s (clock.wait) for a synchronised "
-                     "clock; a signal ends the wait",
-                     (double)s->settings->clock_wait_ns * 1e-9);
-        has_said = true;
-        if (usleep(200000) != 0)
-            return;
-    }
 }
 
 status server_run(const struct settings *settings,
                   const struct server_options *o, struct err *err)
 {
     struct server s = {.settings = settings, .options = o};
-    if (settings->udp[0])
-        wait_for_clock(&s);
     uv_loop_init(&s.loop);
-    s.begun = line_read();
     status st = start_components(&s, err);
-    if (st == ST_OK) {
+    bool is_ready = st == ST_OK && !s.is_stopping;
+    if (is_ready) {
         tell_reach(&s);
         tell_capture(&s);
         st = write_ports(&s, err);
     }
-    if (st == ST_OK) {
+    if (is_ready && st == ST_OK) {
         hub_host(s.hub, "start", "the daemon began to receive", 0);
         uv_run(&s.loop, UV_RUN_DEFAULT);
+        hub_host(s.hub, "stop", "the daemon stops receiving", 0);
     }
     close_components(&s);
     return st;

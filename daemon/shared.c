@@ -56,8 +56,7 @@ void shared_drop(struct shared *s)
     if (!s || --s->n_users > 0)
         return;
     struct pool *p = s->pool;
-    if (s->place == POOL_SIZES ||
-        p->kept + size_of(s->place) > POOL_KEPT_MAX) {
+    if (s->place == POOL_SIZES || p->kept + size_of(s->place) > POOL_KEPT_MAX) {
         free(s);
         return;
     }

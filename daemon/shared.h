@@ -10,8 +10,8 @@
 #include <stddef.h>
 
 enum {
-    POOL_SIZES = 4,                   /* 512 B, 2, 8, 32 KiB               */
-    POOL_KEPT_MAX = 8 * 1024 * 1024   /* bytes kept for the next ones      */
+    POOL_SIZES = 4,                 /* 512 B, 2, 8, 32 KiB               */
+    POOL_KEPT_MAX = 8 * 1024 * 1024 /* bytes kept for the next ones      */
 };
 
 struct pool {
@@ -21,9 +21,9 @@ struct pool {
 
 struct shared {
     struct pool *pool;
-    struct shared *next;   /* among the unused                             */
+    struct shared *next; /* among the unused                             */
     int n_users;
-    int place;             /* which size of the pool, POOL_SIZES = none    */
+    int place; /* which size of the pool, POOL_SIZES = none    */
     size_t len;
     char bytes[];
 };

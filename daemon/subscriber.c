@@ -7,7 +7,8 @@
 
 enum { GATHER_MAX = 256, TEXT_MAX = 1024 };
 
-/* --- queue -------------------------------------------------------------------- */
+/* --- queue
+ * -------------------------------------------------------------------- */
 
 static void pop(struct subscriber *s)
 {
@@ -55,7 +56,8 @@ void subscriber_push_own(struct subscriber *s, const char *bytes, size_t len)
     shared_drop(own);
 }
 
-/* --- sending ------------------------------------------------------------------- */
+/* --- sending
+ * ------------------------------------------------------------------- */
 
 static int gather(struct subscriber *s, uv_buf_t bufs[GATHER_MAX])
 {
@@ -128,17 +130,18 @@ void subscriber_tell_skipped(struct subscriber *s, int64_t real_ns)
     if (s->skipped == 0 || s->n > SUBSCRIBER_QUEUE_MAX / 2 ||
         s->queue_bytes > SUBSCRIBER_QUEUE_BYTES_MAX / 2)
         return;
-    size_t len = wire_encode_host(real_ns, "skipped",
-                                  "messages left out here: this subscriber "
-                                  "reads too slowly",
-                                  s->skipped, s->request.form, line,
-                                  sizeof line);
+    size_t len =
+        wire_encode_host(real_ns, "skipped",
+                         "messages left out here: this subscriber "
+                         "reads too slowly",
+                         s->skipped, s->request.form, line, sizeof line);
     s->skipped_all += s->skipped;
     s->skipped = 0;
     subscriber_push_own(s, line, len);
 }
 
-/* --- newest of each track --------------------------------------------------------- */
+/* --- newest of each track
+ * --------------------------------------------------------- */
 
 static bool make_room(struct subscriber *s, int number)
 {
@@ -151,8 +154,7 @@ static bool make_room(struct subscriber *s, int number)
         struct newest *more = realloc(s->newest[i], (size_t)n * sizeof *more);
         if (!more)
             return false;
-        memset(more + s->n_newest, 0,
-               (size_t)(n - s->n_newest) * sizeof *more);
+        memset(more + s->n_newest, 0, (size_t)(n - s->n_newest) * sizeof *more);
         s->newest[i] = more;
     }
     s->n_newest = n;
@@ -163,13 +165,20 @@ void subscriber_keep_newest(struct subscriber *s, int stream, int number,
                             struct shared *bytes)
 {
     if (number < 0 || !make_room(s, number)) {
-        s->skipped++;
+        subscriber_offer(s, bytes); /* more tracks than places: as they come */
         return;
     }
     struct newest *slot = &s->newest[stream][number];
     shared_drop(slot->bytes);
     bytes->n_users++;
     slot->bytes = bytes;
+}
+
+/* Keeps to the beat of the rate, so that the loop's coarse ticks do not make
+ * it slower; after a pause the beat begins anew. */
+static int64_t next_turn(int64_t sent_ms, int64_t now_ms, int64_t every_ms)
+{
+    return now_ms - sent_ms < 2 * every_ms ? sent_ms + every_ms : now_ms;
 }
 
 void subscriber_send_newest(struct subscriber *s, bool is_last)
@@ -189,7 +198,7 @@ void subscriber_send_newest(struct subscriber *s, bool is_last)
                 return;
             shared_drop(slot->bytes);
             slot->bytes = NULL;
-            slot->sent_ms = s->ways->now_ms;
+            slot->sent_ms = next_turn(slot->sent_ms, s->ways->now_ms, every_ms);
         }
     }
 }

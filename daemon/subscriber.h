@@ -25,11 +25,11 @@ enum {
 
 /* What a request line asked for. */
 struct request {
-    int n_tracks;          /* 0: all                                        */
+    int n_tracks; /* 0: all                                        */
     char track[REQUEST_TRACKS_MAX][RIG_ID_SIZE];
-    bool wants[2];         /* by stream                                     */
-    bool wants_every;      /* every message, not the newest per track       */
-    double rate_hz;        /* newest: at most so often per track, 0 = any   */
+    bool wants[2];    /* by stream                                     */
+    bool wants_every; /* every message, not the newest per track       */
+    double rate_hz;   /* newest: at most so often per track, 0 = any   */
     enum wire_form form;
 };
 
@@ -52,15 +52,15 @@ struct subscriber;
 
 /* What all subscribers share. */
 struct subscriber_ways {
-    int64_t now_ms;        /* monotonic                                    */
+    int64_t now_ms; /* monotonic                                    */
     struct pool *pool;
     void (*leave)(struct subscriber *s); /* its connection is broken       */
 };
 
 enum subscriber_stage {
-    SUBSCRIBER_NEW,        /* may still ask                                */
+    SUBSCRIBER_NEW, /* may still ask                                */
     SUBSCRIBER_LISTENING,
-    SUBSCRIBER_REFUSED,    /* was told why; its end is awaited             */
+    SUBSCRIBER_REFUSED, /* was told why; its end is awaited             */
     SUBSCRIBER_CLOSING
 };
 
@@ -73,16 +73,16 @@ struct subscriber {
     struct request request;
     enum subscriber_stage stage;
     bool is_writing;
-    int64_t since_ms;      /* of this stage                                */
+    int64_t since_ms; /* of this stage                                */
     int64_t wrote_ms, said_ms;
     char line[REQUEST_SIZE];
     size_t line_len;
     struct shared *queue[SUBSCRIBER_QUEUE_MAX]; /* ring                    */
     int first, n;
     int n_in_flight;
-    size_t sent;           /* bytes of the first that are sent already     */
+    size_t sent; /* bytes of the first that are sent already     */
     size_t queue_bytes;
-    uint64_t skipped;      /* not told yet                                 */
+    uint64_t skipped; /* not told yet                                 */
     uint64_t skipped_all;
     struct newest *newest[2]; /* by stream and track number                */
     int n_newest;

@@ -14,7 +14,10 @@
 #include "daemon/endpoint.h"
 #include "daemon/subscriber.h"
 
-enum { TCP_TRACKS_MAX = 4096 };
+enum {
+    TCP_TRACKS_MAX = 4096,
+    TCP_ANYTHING = 4 /* bit of tcp_interest: anybody there at all     */
+};
 
 struct tcp;
 
@@ -24,34 +27,37 @@ struct tcp_host {
     struct shared *(*description)(void *ctx, enum wire_form form);
     /* Somebody came, changed what he wants, or left. */
     void (*interest)(void *ctx);
+    struct pool *pool;
     void *ctx;
 };
 
 status tcp_start(struct tcp **t, uv_loop_t *loop, struct endpoint *at,
-                 int max_subscribers, struct tcp_host host, struct err *err)
-    MUST_USE;
+                 int max_subscribers, struct tcp_host host,
+                 struct err *err) MUST_USE;
 
 /* A message that may be conflated carries its track's number, others -1. */
 struct tcp_offer {
     struct shared *bytes[2]; /* by form; NULL where nobody wants it        */
     const char *track;       /* "" = concerns everybody                    */
     int number;
-    int stream;              /* of an estimate, -1 for anything else       */
+    int stream; /* of an estimate, -1 for anything else       */
 };
 
-void tcp_offer(struct tcp *t, const struct tcp_offer *offer, int64_t now_ms);
+void tcp_offer(struct tcp *t, const struct tcp_offer *offer);
 
 /* Does anybody want it in this form? */
 bool tcp_wants(const struct tcp *t, enum wire_form form, int stream,
                const char *track);
 
-/* Streams that anybody wants, bit by bit; who has not asked yet wants all. */
+/* Streams that anybody wants, bit by bit, and TCP_ANYTHING; who has not asked
+ * yet wants all. */
 unsigned tcp_interest(const struct tcp *t);
 
-int tcp_n_subscribers(const struct tcp *t);
+/* Sends what is queued, as far as the sockets take it. */
+void tcp_flush(struct tcp *t);
 
-/* Every few milliseconds: rates, heartbeats, deadlines. */
-void tcp_tick(struct tcp *t, int64_t now_ms, int64_t line_ns);
+/* Every few milliseconds: rates, heartbeats, deadlines; sends what is due. */
+void tcp_tick(struct tcp *t, int64_t now_ms);
 
 /* The same number of skipped messages for everybody: lost before the hub. */
 void tcp_skipped(struct tcp *t, uint64_t n);

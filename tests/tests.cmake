@@ -20,7 +20,8 @@ function(check_tests folder)
     add_dependencies(${name} ropewalk ropewalkd)
     add_test(NAME ${folder}.${name} COMMAND ${name}
              WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
-    set_tests_properties(${folder}.${name} PROPERTIES TIMEOUT 300)
+    set_tests_properties(${folder}.${name} PROPERTIES
+      TIMEOUT $<IF:$<BOOL:${SANITIZE}>,1800,300>)
   endforeach()
 endfunction()
 

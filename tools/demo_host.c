@@ -130,9 +130,8 @@ static int copy_rehearsal(const struct call *call, const struct demo_host *h,
 {
     char from[SETTINGS_PATH_SIZE];
     size_t len = 0;
-    char *text = rehearsal_path(rig, from, sizeof from)
-                     ? read_file(from, &len)
-                     : NULL;
+    char *text =
+        rehearsal_path(rig, from, sizeof from) ? read_file(from, &len) : NULL;
     int code = EXIT_FINE;
     if (text == NULL) {
         call_say(call, "%s: %s; the demo needs it beside the rig file", from,
@@ -153,8 +152,7 @@ static int copy_rehearsal(const struct call *call, const struct demo_host *h,
 static bool find_rig(const char *rig, char *out)
 {
     static const char *const places[] = {"../share/ropewalk/rigs",
-                                         "../config/rigs",
-                                         "../../config/rigs"};
+                                         "../config/rigs", "../../config/rigs"};
     char own[SETTINGS_PATH_SIZE], name[2 * RIG_ID_SIZE + 64];
     snprintf(out, SETTINGS_PATH_SIZE, "%s", rig);
     if (access(out, R_OK) == 0)
@@ -193,14 +191,18 @@ int demo_host_prepare(const struct call *call, struct demo_host *h,
     char found[SETTINGS_PATH_SIZE], own[SETTINGS_PATH_SIZE];
     memset(h, 0, sizeof *h);
     if (!find_rig(rig, found)) {
-        call_say(call, "%s: no such file, and no rig of that name came with "
-                 "the program; name a file", rig);
+        call_say(call,
+                 "%s: no such file, and no rig of that name came with "
+                 "the program; name a file",
+                 rig);
         return EXIT_NOT_THERE;
     }
     if (!own_folder(own) || !join(h->daemon, own, "ropewalkd") ||
         access(h->daemon, X_OK) != 0) {
-        call_say(call, "%s: the daemon is not there; install it beside this "
-                 "program", h->daemon);
+        call_say(call,
+                 "%s: the daemon is not there; install it beside this "
+                 "program",
+                 h->daemon);
         return EXIT_NOT_THERE;
     }
     if (folder == NULL)
@@ -243,8 +245,8 @@ static bool read_ports(struct demo_host *h, const char *port_file)
     cJSON *tree = text == NULL ? NULL : cJSON_Parse(text);
     const cJSON *udp = cJSON_GetObjectItemCaseSensitive(tree, "udp");
     const cJSON *tcp = cJSON_GetObjectItemCaseSensitive(tree, "tcp");
-    const char *capture = cJSON_GetStringValue(
-        cJSON_GetObjectItemCaseSensitive(tree, "capture"));
+    const char *capture =
+        cJSON_GetStringValue(cJSON_GetObjectItemCaseSensitive(tree, "capture"));
     h->udp_port = cJSON_IsNumber(udp) ? (int)udp->valuedouble : 0;
     h->tcp_port = cJSON_IsNumber(tcp) ? (int)tcp->valuedouble : 0;
     snprintf(h->capture, sizeof h->capture, "%s",

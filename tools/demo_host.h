@@ -9,12 +9,12 @@
 
 struct demo_host {
     char folder[SETTINGS_PATH_SIZE];
-    char rig[SETTINGS_PATH_SIZE];       /* its copy there                 */
+    char rig[SETTINGS_PATH_SIZE]; /* its copy there                 */
     char rehearsal[SETTINGS_PATH_SIZE];
-    char log[SETTINGS_PATH_SIZE];       /* what the daemon said           */
-    char daemon[SETTINGS_PATH_SIZE];    /* the program beside this one    */
-    char capture[SETTINGS_PATH_SIZE];   /* the folder, "" without one     */
-    pid_t pid;                          /* 0: not running                 */
+    char log[SETTINGS_PATH_SIZE];     /* what the daemon said           */
+    char daemon[SETTINGS_PATH_SIZE];  /* the program beside this one    */
+    char capture[SETTINGS_PATH_SIZE]; /* the folder, "" without one     */
+    pid_t pid;                        /* 0: not running                 */
     int udp_port, tcp_port;
 };
 

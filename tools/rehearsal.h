@@ -21,9 +21,9 @@ struct rehearsal_sender {
     struct scene_datagram next;
     bool is_over;
     int fd;
-    int64_t offset_ns;   /* realtime minus monotonic at the beginning      */
+    int64_t offset_ns; /* realtime minus monotonic at the beginning      */
     uint64_t n_sent, n_refused, n_bytes;
-    int64_t behind_ns;   /* the most that one was sent after its time      */
+    int64_t behind_ns; /* the most that one was sent after its time      */
 };
 
 status rehearsal_sender_init(struct rehearsal_sender *r, struct scene *s,

@@ -153,7 +153,7 @@ static void begin_wander(const struct scene *s, const struct scene_track *t,
     scene_random(s, "wander", of, &w->random);
     memset(w->c, 0, sizeof w->c);
     w->step = 0;
-    if (b->model == BLOCK_GAUSS_MARKOV)             /* u^2 = q tau / 2       */
+    if (b->model == BLOCK_GAUSS_MARKOV) /* u^2 = q tau / 2       */
         w->c[0] = random_normal(&w->random) * sqrt(truth->q * b->tau_s / 2);
     draw(b, truth->q, w);
 }

@@ -32,9 +32,9 @@
 
 enum {
     SCENE_TRACKS_MAX = 64,
-    SCENE_MOVES_MAX = 500,  /* of one track                               */
+    SCENE_MOVES_MAX = 500, /* of one track                               */
     SCENE_FAULTS_MAX = 100,
-    SCENE_STEP_NS = 100000  /* how long a drawn noise is held             */
+    SCENE_STEP_NS = 100000 /* how long a drawn noise is held             */
 };
 
 enum scene_move_kind {
@@ -60,13 +60,13 @@ struct scene_piece {
 /* What wanders, since its last noise was drawn. */
 struct scene_wander {
     struct random random;
-    int64_t step;  /* whole steps taken; -1: not begun                    */
-    double c[4];   /* as in a piece, the noise in its place               */
+    int64_t step; /* whole steps taken; -1: not begun                    */
+    double c[4];  /* as in a piece, the noise in its place               */
     double noise;
 };
 
 struct scene_block {
-    double q;      /* density of what wanders, 0 = nothing does           */
+    double q; /* density of what wanders, 0 = nothing does           */
     int n_pieces;
     struct scene_piece *piece;
     struct scene_wander wander;
@@ -74,7 +74,7 @@ struct scene_block {
 
 struct scene_track {
     char id[RIG_ID_SIZE];
-    int kind;      /* index into rig.kind                                 */
+    int kind; /* index into rig.kind                                 */
     double start[RIG_STATES_MAX], start_u[RIG_STATES_MAX];
     int n_moves;
     struct scene_move *move;
@@ -83,7 +83,7 @@ struct scene_track {
 
 /* What the network does with one sensor's datagrams. */
 struct scene_link {
-    int64_t delay_min_ns, delay_max_ns; /* even between                   */
+    int64_t delay_min_ns, delay_max_ns;  /* even between                   */
     double loss, duplicates, reordering; /* shares                        */
     enum wire_form form;
 };
@@ -93,7 +93,7 @@ enum scene_fault_kind { SCENE_JUMP, SCENE_SILENCE };
 struct scene_fault {
     enum scene_fault_kind kind;
     int sensor;
-    int track;     /* index into scene.track, -1: all                     */
+    int track; /* index into scene.track, -1: all                     */
     int64_t at_ns, for_ns;
     double jump[READS_MAX]; /* in the sensor's unit                       */
 };
@@ -110,7 +110,7 @@ struct scene {
 
 /* What a rehearsal is loaded for. */
 struct scene_source {
-    const struct rig *rig;  /* kept by the scene: it must outlive it        */
+    const struct rig *rig; /* kept by the scene: it must outlive it        */
     const char *path;
     const char *const *left_out; /* sensors that are not in the rig and yet
                                may be named (ends with NULL); or NULL       */

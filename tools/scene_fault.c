@@ -8,9 +8,10 @@ static const char *const keys[] = {"at",   "for",     "sensor", "track",
 
 /* Kinds that a rehearsal will know; refused by name until they are built. */
 static const char *const later[] = {
-    "scale-step", "freeze", "drift",     "noise-factor", "unit-mistake",
-    "clock-step", "wrap",   "bunch",     "duplicate",    "swap",
-    "NaN",        "nan",    "common-step", NULL};
+    "scale-step",   "freeze",     "drift", "noise-factor",
+    "unit-mistake", "clock-step", "wrap",  "bunch",
+    "duplicate",    "swap",       "NaN",   "nan",
+    "common-step",  NULL};
 
 const char *scene_fault_text(enum scene_fault_kind kind)
 {
@@ -53,7 +54,8 @@ static const cJSON *fault_kind(struct scene_text *r, const cJSON *item,
     const cJSON *jump = cJSON_GetObjectItemCaseSensitive(item, "jump");
     const cJSON *silence = cJSON_GetObjectItemCaseSensitive(item, "silence");
     if ((jump == NULL) == (silence == NULL)) {
-        scene_text_refuse(r, "write {\"jump\": \"0.6 m\"} or "
+        scene_text_refuse(r,
+                          "write {\"jump\": \"0.6 m\"} or "
                           "{\"silence\": true}",
                           "a fault has one of jump, silence");
         return NULL;
@@ -70,8 +72,7 @@ static void load_jump(struct scene_text *r, const struct rig_sensor *sensor,
                             jump);
         return;
     }
-    if (cJSON_GetArraySize(value) != sensor->reads.m ||
-        !cJSON_IsArray(value)) {
+    if (cJSON_GetArraySize(value) != sensor->reads.m || !cJSON_IsArray(value)) {
         scene_text_refuse(r, "give a list of so many values",
                           "%s reads %d components", sensor->name,
                           sensor->reads.m);
@@ -134,17 +135,16 @@ static void load_time(struct scene_text *r, const cJSON *item, const char *key,
     scene_text_leave(r);
 }
 
-static void load_fault(struct scene_text *r, struct scene *s,
-                       const cJSON *item)
+static void load_fault(struct scene_text *r, struct scene *s, const cJSON *item)
 {
     const char *sensors[RIG_SENSORS_MAX + 1] = {NULL};
     const char *tracks[SCENE_TRACKS_MAX + 1] = {NULL};
     struct scene_fault f = {0};
     const cJSON *value = fault_kind(r, item, &f.kind);
     if (value == NULL ||
-        scene_text_is_left_out(r, cJSON_GetStringValue(
-                               cJSON_GetObjectItemCaseSensitive(item,
-                                                                "sensor"))))
+        scene_text_is_left_out(
+            r, cJSON_GetStringValue(
+                   cJSON_GetObjectItemCaseSensitive(item, "sensor"))))
         return;
     for (int i = 0; i < s->rig->n_sensors; i++)
         sensors[i] = s->rig->sensor[i].name;

@@ -18,8 +18,8 @@ enum { REHEARSAL_BYTES_MAX = 4 << 20, Q_UNIT_SIZE = RIG_UNIT_SIZE + 16 };
 struct loader {
     struct scene_text text;
     struct scene *scene;
-    struct scene_track *track;     /* the one being read                  */
-    const struct rig_kind *kind;   /* its kind                            */
+    struct scene_track *track;   /* the one being read                  */
+    const struct rig_kind *kind; /* its kind                            */
 };
 
 /* --- names of states and blocks ------------------------------------------- */
@@ -47,8 +47,7 @@ static void refuse_state(struct loader *l, bool is_key, const char *name)
     for (int i = 0; i < l->kind->n; i++)
         list[i] = l->kind->state[i].name;
     list[l->kind->n] = NULL;
-    scene_text_refuse_name(&l->text, is_key, "state of this track", name,
-                           list);
+    scene_text_refuse_name(&l->text, is_key, "state of this track", name, list);
 }
 
 static void refuse_block(struct loader *l, bool is_key, const char *name)
@@ -57,8 +56,7 @@ static void refuse_block(struct loader *l, bool is_key, const char *name)
     for (int i = 0; i < l->kind->n_blocks; i++)
         list[i] = l->kind->state[l->kind->block[i].at].name;
     list[l->kind->n_blocks] = NULL;
-    scene_text_refuse_name(&l->text, is_key, "block of this track", name,
-                           list);
+    scene_text_refuse_name(&l->text, is_key, "block of this track", name, list);
 }
 
 /* --- start ---------------------------------------------------------------- */
@@ -76,12 +74,14 @@ static void load_start_value(struct loader *l, const cJSON *value, int state)
     if (!scene_text_keys(&l->text, value, keys))
         return;
     const cJSON *item;
-    cJSON_ArrayForEach(item, value) {
+    cJSON_ArrayForEach(item, value)
+    {
         bool is_u = strcmp(item->string, "u") == 0;
         scene_text_enter(&l->text, item->string);
         if (scene_text_quantity(&l->text, item, unit,
                                 is_u ? QUANTITY_DIFFERENCE : QUANTITY_POINT,
-                                is_u ? u : mean) && *u < 0)
+                                is_u ? u : mean) &&
+            *u < 0)
             scene_text_refuse(&l->text, NULL, "u is below 0");
         scene_text_leave(&l->text);
     }
@@ -95,7 +95,8 @@ static void load_start(struct loader *l, const cJSON *start)
         return;
     }
     const cJSON *item;
-    cJSON_ArrayForEach(item, start) {
+    cJSON_ArrayForEach(item, start)
+    {
         int state = find_state(l->kind, item->string);
         scene_text_enter(&l->text, item->string);
         if (state < 0)
@@ -116,8 +117,8 @@ static void default_start(struct loader *l)
 
 /* --- moves ---------------------------------------------------------------- */
 
-static const char *const move_keys[] = {"of",    "at",   "for", "jerk",
-                                        "accel", "speed", "to", NULL};
+static const char *const move_keys[] = {"of",    "at",    "for", "jerk",
+                                        "accel", "speed", "to",  NULL};
 
 /* Which of jerk, accel, speed, to stands in the move; -1 after a complaint. */
 static int move_kind(struct loader *l, const cJSON *item)
@@ -145,7 +146,8 @@ static int move_block(struct loader *l, const cJSON *item)
     if (of == NULL) {
         scene_text_refuse(&l->text, "add \"of\": and a block's name",
                           "the track has %d blocks and the move does not say "
-                          "which it moves", l->kind->n_blocks);
+                          "which it moves",
+                          l->kind->n_blocks);
         return -1;
     }
     scene_text_enter(&l->text, "of");
@@ -200,7 +202,8 @@ static void check_order(struct loader *l, const struct scene_move *m)
         if (m->at_ns < was->at_ns + was->for_ns)
             scene_text_refuse(&l->text, "write moves in order, without overlap",
                               "this move begins at %g s, before the one above "
-                              "it ends at %g s", (double)m->at_ns * 1e-9,
+                              "it ends at %g s",
+                              (double)m->at_ns * 1e-9,
                               (double)(was->at_ns + was->for_ns) * 1e-9);
         return;
     }
@@ -246,7 +249,8 @@ static void load_moves(struct loader *l, const cJSON *moves)
         return;
     }
     const cJSON *item;
-    cJSON_ArrayForEach(item, moves) {
+    cJSON_ArrayForEach(item, moves)
+    {
         scene_text_enter_at(&l->text, i++);
         load_move(l, item);
         scene_text_leave(&l->text);
@@ -265,7 +269,8 @@ static void load_density(struct loader *l, const cJSON *value, int block)
         scene_text_refuse(&l->text, "move it with \"to\" instead",
                           "a constant does not wander");
     else if (scene_text_quantity(&l->text, value, unit, QUANTITY_DIFFERENCE,
-                                 q) && !(*q >= 0))
+                                 q) &&
+             !(*q >= 0))
         scene_text_refuse(&l->text, NULL, "the density %g %s is below 0", *q,
                           unit);
 }
@@ -278,7 +283,8 @@ static void load_wander(struct loader *l, const cJSON *wander)
         return;
     }
     const cJSON *item;
-    cJSON_ArrayForEach(item, wander) {
+    cJSON_ArrayForEach(item, wander)
+    {
         int block = find_block(l->kind, item->string);
         scene_text_enter(&l->text, item->string);
         if (block < 0)
@@ -354,7 +360,8 @@ static void load_truth(struct loader *l, const cJSON *truth)
         return;
     }
     const cJSON *item;
-    cJSON_ArrayForEach(item, truth) {
+    cJSON_ArrayForEach(item, truth)
+    {
         scene_text_enter(&l->text, item->string);
         load_track(l, item);
         scene_text_leave(&l->text);

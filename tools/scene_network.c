@@ -77,7 +77,8 @@ void scene_network_load(struct scene_text *r, struct scene *s,
     for (int i = 0; i < n; i++)
         list[i] = s->rig->sensor[i].name;
     for (int i = 0; r->left_out != NULL && r->left_out[i] != NULL &&
-                    n < 2 * RIG_SENSORS_MAX; i++)
+                    n < 2 * RIG_SENSORS_MAX;
+         i++)
         list[n++] = r->left_out[i];
     if (!scene_text_keys(r, network, list))
         return;
@@ -128,8 +129,7 @@ static status push(struct scene_network *n, const struct scene_post *post)
     }
     if (n->n == n->size) {
         int size = n->size == 0 ? 256 : n->size * 2;
-        struct scene_post *more =
-            realloc(n->post, (size_t)size * sizeof *more);
+        struct scene_post *more = realloc(n->post, (size_t)size * sizeof *more);
         if (more == NULL)
             return ST_NOMEM;
         n->post = more;

@@ -18,7 +18,7 @@ enum { SCENE_POSTS_MAX = 1 << 20 };
 
 struct scene_post {
     int64_t arrives_ns;
-    uint64_t serial;  /* of sending: breaks ties of arrival               */
+    uint64_t serial; /* of sending: breaks ties of arrival               */
     uint64_t seq;
     struct scene_reading reading;
 };
@@ -27,7 +27,7 @@ struct scene_network {
     struct random random[RIG_SENSORS_MAX];
     uint64_t seq[RIG_SENSORS_MAX]; /* a sensor numbers all that it says   */
     uint64_t n_sent, n_lost, n_doubled, n_reordered;
-    uint64_t n_full;  /* dropped because SCENE_POSTS_MAX were on the way  */
+    uint64_t n_full; /* dropped because SCENE_POSTS_MAX were on the way  */
     uint64_t serial;
     int n, size;
     struct scene_post *post; /* heap, the earliest first                  */

@@ -19,12 +19,12 @@ struct scene_play {
     int n_sensors;       /* sensors times the tracks that they read        */
     struct scene_sensor *sensor;
     struct scene_network network;
-    uint64_t n_silent;   /* samples that a fault swallowed                 */
+    uint64_t n_silent; /* samples that a fault swallowed                 */
     uint64_t n_datagrams;
 };
 
 struct scene_datagram {
-    int64_t arrives_ns;  /* since 1970                                     */
+    int64_t arrives_ns; /* since 1970                                     */
     int sensor, track;
     size_t len;
     char bytes[SCENE_DATAGRAM_MAX];

@@ -91,8 +91,8 @@ bool scene_sensor_sample(struct scene_sensor *p, struct scene *s,
 {
     const struct rig_sensor *sensor = &s->rig->sensor[p->sensor];
     double x[RIG_STATES_MAX];
-    *reading = (struct scene_reading){p->sensor, p->track,
-                                      scene_sensor_due(p, s), {0}};
+    *reading = (struct scene_reading){
+        p->sensor, p->track, scene_sensor_due(p, s), {0}};
     p->n++;
     scene_truth(s, p->track, reading->t_ns, x);
     for (int i = 0; i < sensor->reads.m; i++) {
@@ -102,6 +102,5 @@ bool scene_sensor_sample(struct scene_sensor *p, struct scene *s,
             value = fold(value);
         reading->z[i] = (value - sensor->shift[i]) / sensor->scale[i];
     }
-    return scene_fault_apply(s, p->sensor, p->track, reading->t_ns,
-                             reading->z);
+    return scene_fault_apply(s, p->sensor, p->track, reading->t_ns, reading->z);
 }

@@ -21,7 +21,7 @@ struct scene_sensor {
 
 struct scene_reading {
     int sensor, track;
-    int64_t t_ns;     /* when it was true                                 */
+    int64_t t_ns; /* when it was true                                 */
     double z[READS_MAX];
 };
 

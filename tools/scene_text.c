@@ -72,9 +72,8 @@ void scene_text_refuse_key(struct scene_text *r, const char *remedy,
     report(r, true, remedy, what);
 }
 
-void scene_text_refuse_name(struct scene_text *r, bool is_key,
-                            const char *what, const char *name,
-                            const char *const *list)
+void scene_text_refuse_name(struct scene_text *r, bool is_key, const char *what,
+                            const char *name, const char *const *list)
 {
     char remedy[WHAT_SIZE] = "one of:", full[WHAT_SIZE];
     const char *near = textpos_nearest(name, list);
@@ -127,8 +126,8 @@ bool scene_text_init(struct scene_text *r, const char *path, const char *text,
                      size_t len, struct problems *problems)
 {
     struct err err = {ST_NOMEM, "out of memory"};
-    *r = (struct scene_text){.path = path, .text = text, .len = len,
-                             .problems = problems};
+    *r = (struct scene_text){
+        .path = path, .text = text, .len = len, .problems = problems};
     r->plain = calloc(len + 1, 1);
     r->units = r->plain == NULL ? NULL : quantity_units_new(&err);
     if (r->units == NULL) {
@@ -178,7 +177,8 @@ bool scene_text_keys(struct scene_text *r, const cJSON *object,
         scene_text_refuse(r, "write it in { }", "this must be an object");
         return false;
     }
-    cJSON_ArrayForEach(item, object) {
+    cJSON_ArrayForEach(item, object)
+    {
         if (is_in(item->string, list))
             continue;
         scene_text_enter(r, item->string);
@@ -189,8 +189,7 @@ bool scene_text_keys(struct scene_text *r, const cJSON *object,
 }
 
 bool scene_text_quantity(struct scene_text *r, const cJSON *value,
-                         const char *unit, enum quantity_role role,
-                         double *out)
+                         const char *unit, enum quantity_role role, double *out)
 {
     struct err err;
     if (cJSON_IsNumber(value)) {
@@ -200,7 +199,8 @@ bool scene_text_quantity(struct scene_text *r, const cJSON *value,
     if (!cJSON_IsString(value)) {
         scene_text_refuse(r, NULL,
                           "this must be a number or a text with a unit, "
-                          "like \"1.5 %s\"", unit);
+                          "like \"1.5 %s\"",
+                          unit);
         return false;
     }
     if (quantity_parse(r->units, value->valuestring, unit, role, out, &err) ==

@@ -14,7 +14,7 @@
 struct scene_text {
     const char *path, *text; /* as the user wrote it, not owned           */
     size_t len;
-    char *plain;             /* without comments                          */
+    char *plain; /* without comments                          */
     cJSON *root;
     struct quantity_units *units;
     const char *const *left_out; /* names of sensors to pass over, or NULL */
@@ -46,9 +46,8 @@ void scene_text_refuse_key(struct scene_text *r, const char *remedy,
 bool scene_text_is_left_out(const struct scene_text *r, const char *name);
 
 /* Refuses a name that is not in the list, and names the nearest. */
-void scene_text_refuse_name(struct scene_text *r, bool is_key,
-                            const char *what, const char *name,
-                            const char *const *list);
+void scene_text_refuse_name(struct scene_text *r, bool is_key, const char *what,
+                            const char *name, const char *const *list);
 
 /* True if it is an object; refuses each of its keys that is not in the list
  * (ends with NULL). */

@@ -19,9 +19,9 @@
 
 enum {
     LINE_MAX_BYTES = 1 << 20,
-    LEAD_NS = 200000000,       /* until the rehearsal begins              */
+    LEAD_NS = 200000000, /* until the rehearsal begins              */
     DRAW_EVERY_NS = 1000000000,
-    LINGER_NS = 1300000000     /* beyond the horizon: the next counts     */
+    LINGER_NS = 1300000000 /* beyond the horizon: the next counts     */
 };
 
 static const char request[] =
@@ -37,8 +37,8 @@ struct job {
     struct rehearsal_sender sender;
     struct demo_view view;
     int tcp, udp;
-    int64_t seconds_ns;   /* --seconds, 0: until the rehearsal's end       */
-    int64_t end_ns;       /* monotonic: when to stop sending               */
+    int64_t seconds_ns; /* --seconds, 0: until the rehearsal's end       */
+    int64_t end_ns;     /* monotonic: when to stop sending               */
     int64_t drawn_ns;
     bool is_terminal, has_ended; /* has_ended: the stream did              */
     char *line;
@@ -95,7 +95,7 @@ static void draw_when_due(struct job *job)
     if (now - job->drawn_ns < DRAW_EVERY_NS)
         return;
     job->drawn_ns = now;
-    demo_view_draw(&job->view, stdout, job->is_terminal);
+    demo_view_draw(&job->view);
 }
 
 /* --- the run -------------------------------------------------------------- */
@@ -110,8 +110,8 @@ static bool play(struct job *job)
         if (rehearsal_send_due(&job->sender) != ST_OK)
             return false;
         int64_t wait_ns = rehearsal_wait_ns(&job->sender);
-        listen_for(job, wait_ns < DRAW_EVERY_NS / 10 ? wait_ns
-                                                     : DRAW_EVERY_NS / 10);
+        listen_for(job,
+                   wait_ns < DRAW_EVERY_NS / 10 ? wait_ns : DRAW_EVERY_NS / 10);
         draw_when_due(job);
     }
     return true;
@@ -120,13 +120,12 @@ static bool play(struct job *job)
 /* Until what was sent has settled and was counted. */
 static bool linger(struct job *job)
 {
-    int64_t until_ns =
-        monotonic_ns() + job->rig->rig.horizon_ns + LINGER_NS;
+    job->view.hides_events = true;
+    int64_t until_ns = monotonic_ns() + job->rig->rig.horizon_ns + LINGER_NS;
     for (int64_t left; (left = until_ns - monotonic_ns()) > 0;) {
         if (job->has_ended || !demo_host_lives(&job->host))
             return false;
-        listen_for(job, left < DRAW_EVERY_NS / 10 ? left
-                                                  : DRAW_EVERY_NS / 10);
+        listen_for(job, left < DRAW_EVERY_NS / 10 ? left : DRAW_EVERY_NS / 10);
         if (job->is_terminal)
             draw_when_due(job);
     }
@@ -158,7 +157,8 @@ static int connect_all(struct job *job)
     job->end_ns = job->seconds_ns > 0
                       ? monotonic_ns() + LEAD_NS + job->seconds_ns
                       : INT64_MAX;
-    if (demo_view_init(&job->view, job->truth, begin_ns) != ST_OK ||
+    if (demo_view_init(&job->view, job->truth, begin_ns, job->is_terminal) !=
+            ST_OK ||
         rehearsal_sender_init(&job->sender, job->scene, job->udp, begin_ns) !=
             ST_OK) {
         call_say(job->call, "out of memory");
@@ -188,10 +188,10 @@ static int show(struct job *job)
         return code;
     bool is_alive = play(job) && linger(job);
     if (is_alive)
-        demo_view_draw(&job->view, stdout, job->is_terminal);
+        demo_view_draw(&job->view);
     bool is_clean = demo_host_stop(&job->host);
     putchar('\n');
-    demo_view_ledger(&job->view, stdout);
+    demo_view_ledger(&job->view);
     tell_next_steps(job);
     if (!is_alive || !is_clean) {
         call_say(job->call, "the daemon ended badly; its log is %s",
@@ -212,16 +212,16 @@ static int prepare(struct job *job)
 {
     const struct call *call = job->call;
     const char *rig = call_option(call, "rig");
-    int code = demo_host_prepare(call, &job->host, rig == NULL ? "carriage"
-                                                               : rig,
-                                 call_option(call, "folder"));
+    int code =
+        demo_host_prepare(call, &job->host, rig == NULL ? "carriage" : rig,
+                          call_option(call, "folder"));
     if (code != EXIT_FINE)
         return code;
     job->rig = call_rig_path(call, job->host.rig);
     if (job->rig == NULL)
         return EXIT_BAD_SETTINGS;
-    code = rehearsal_load(call, &job->rig->rig, job->host.rehearsal,
-                          &job->scene);
+    code =
+        rehearsal_load(call, &job->rig->rig, job->host.rehearsal, &job->scene);
     if (code == EXIT_FINE)
         code = rehearsal_load(call, &job->rig->rig, job->host.rehearsal,
                               &job->truth);
@@ -249,8 +249,10 @@ static int run(const struct call *call)
     if (code == EXIT_FINE)
         code = demo_host_start(call, &job.host);
     if (code == EXIT_FINE) {
-        call_say(call, "%s, in %s; Ctrl-C ends it", job.rig->rig.name,
-                 job.host.folder);
+        call_say(call,
+                 "%s, in %s; +- is U (k = 2), off is the true error; Ctrl-C "
+                 "ends it",
+                 job.rig->rig.name, job.host.folder);
         code = show(&job);
     }
     demo_host_stop(&job.host);
@@ -290,7 +292,7 @@ const struct verb verb_demo = {
         "Makes a folder, starts a daemon of its own there on ports that the "
         "system chooses, plays a rehearsal to it, and shows once a second "
         "what the daemon says beside what is true: every state with its "
-        "standard uncertainty, the verdict with its reasons, and what came "
+        "U (k = 2) and its error, the verdict with its reasons, and what came "
         "late. It stops the daemon at the end and leaves the capture behind, "
         "with the commands to go on with.",
     .examples = "ropewalk demo                # the carriage, 70 s\n"

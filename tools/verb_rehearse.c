@@ -18,16 +18,16 @@
 #define BEGIN_NS 1767225600000000000
 
 enum {
-    LEAD_NS = 20000000,  /* the first datagram is still to come           */
-    FROM_PORT = 49152    /* of the sender in a capture                    */
+    LEAD_NS = 20000000, /* the first datagram is still to come           */
+    FROM_PORT = 49152   /* of the sender in a capture                    */
 };
 
 struct job {
     const struct call *call;
-    const char *path;     /* of the rehearsal                             */
+    const char *path; /* of the rehearsal                             */
     struct settings *rig;
     struct scene *scene;
-    struct scene *other;  /* the same once more, for the table of truth   */
+    struct scene *other; /* the same once more, for the table of truth   */
     struct scene_table table;
     FILE *truth;
     int64_t begin_ns;
@@ -88,8 +88,8 @@ static int open_truth(struct job *job, const char *out)
     const char *path = call_option(job->call, "truth");
     if (path == NULL && out == NULL)
         return EXIT_FINE;
-    int code = rehearsal_load(job->call, &job->rig->rig, job->path,
-                              &job->other);
+    int code =
+        rehearsal_load(job->call, &job->rig->rig, job->path, &job->other);
     if (code != EXIT_FINE)
         return code;
     char *name = path == NULL ? beside(out, "truth") : NULL;
@@ -114,8 +114,8 @@ static void truth_until(struct job *job, int64_t t_ns)
 
 static struct sender loopback(int port)
 {
-    return (struct sender){.family = 4, .address = {127, 0, 0, 1},
-                           .port = (uint16_t)port};
+    return (struct sender){
+        .family = 4, .address = {127, 0, 0, 1}, .port = (uint16_t)port};
 }
 
 /* The port of receive.udp, or the usual one where the rig leaves it open. */
@@ -224,11 +224,15 @@ static int to_socket(struct job *job, const char *to)
     if (st != ST_OK)
         call_say(job->call, "%s", status_text(st));
     if (r.n_refused > 0)
-        call_say(job->call, "%s: nobody listens there; %llu were refused; "
-                 "start ropewalkd first", to, (unsigned long long)r.n_refused);
+        call_say(job->call,
+                 "%s: nobody listens there; %llu were refused; "
+                 "start ropewalkd first",
+                 to, (unsigned long long)r.n_refused);
     if (r.behind_ns > 100000000)
-        call_say(job->call, "this computer was busy: a datagram left %.0f ms "
-                 "after its time", (double)r.behind_ns * 1e-6);
+        call_say(job->call,
+                 "this computer was busy: a datagram left %.0f ms "
+                 "after its time",
+                 (double)r.behind_ns * 1e-6);
     if (st != ST_OK)
         return EXIT_PROBLEM;
     return r.n_refused > 0 ? EXIT_NOT_THERE : EXIT_FINE;
@@ -239,10 +243,9 @@ static int to_socket(struct job *job, const char *to)
 static void tell(const struct job *job)
 {
     const struct scene_network *n = &job->network;
-    const unsigned long long count[] = {n->n_sent,      n->n_lost,
-                                        n->n_doubled,   n->n_reordered,
-                                        job->n_silent,  n->n_full,
-                                        job->n_datagrams};
+    const unsigned long long count[] = {
+        n->n_sent,     n->n_lost, n->n_doubled,    n->n_reordered,
+        job->n_silent, n->n_full, job->n_datagrams};
     if (call_option(job->call, "json") != NULL)
         printf("{\"seed\":%llu,\"lasts\":%g,\"samples\":%llu,\"lost\":%llu,"
                "\"duplicates\":%llu,\"reordered\":%llu,\"silent\":%llu,"
@@ -252,14 +255,17 @@ static void tell(const struct job *job)
                count[2], count[3], count[4], count[5], count[6],
                (unsigned long long)job->n_bytes);
     else
-        call_say(job->call, "seed %llu, %g s: %llu samples, %llu lost, %llu "
+        call_say(job->call,
+                 "seed %llu, %g s: %llu samples, %llu lost, %llu "
                  "doubled, %llu out of order, %llu silenced; %llu datagrams",
                  (unsigned long long)job->scene->seed,
                  (double)job->scene->lasts_ns * 1e-9, count[0], count[1],
                  count[2], count[3], count[4], count[6]);
     if (n->n_full > 0)
-        call_say(job->call, "%llu datagrams were dropped: more than %d were "
-                 "on the way; shorten the delays", count[5], SCENE_POSTS_MAX);
+        call_say(job->call,
+                 "%llu datagrams were dropped: more than %d were "
+                 "on the way; shorten the delays",
+                 count[5], SCENE_POSTS_MAX);
 }
 
 static int rehearse(struct job *job, const char *out, const char *to)
@@ -268,13 +274,14 @@ static int rehearse(struct job *job, const char *out, const char *to)
     job->begin_ns = out != NULL ? BEGIN_NS : instant_now_ns() + LEAD_NS;
     if (begin != NULL && out == NULL) {
         call_say(job->call, "--begin: a rehearsal to a socket begins now; "
-                 "give --begin with --out");
+                            "give --begin with --out");
         return EXIT_WRONG_USE;
     }
-    if (begin != NULL && !instant_parse(begin, strlen(begin),
-                                        &job->begin_ns)) {
-        call_say(job->call, "--begin: '%s' is no time; write it like "
-                 "2026-03-01T10:00:00Z", begin);
+    if (begin != NULL && !instant_parse(begin, strlen(begin), &job->begin_ns)) {
+        call_say(job->call,
+                 "--begin: '%s' is no time; write it like "
+                 "2026-03-01T10:00:00Z",
+                 begin);
         return EXIT_WRONG_USE;
     }
     int code = open_truth(job, out);
@@ -320,8 +327,7 @@ static int run(const struct call *call)
 }
 
 static const struct option_row options[] = {
-    {"seed", "N", "another seed than the file's; same seed, same bytes",
-     false},
+    {"seed", "N", "another seed than the file's; same seed, same bytes", false},
     {"lasts", "T", "another length than the file's", false},
     {"to", "HOST:PORT",
      "sends there in real time; default is the rig's receive.udp", false},

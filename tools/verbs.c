@@ -8,12 +8,6 @@ extern const struct verb verb_demo, verb_check, verb_rehearse, verb_send,
     verb_follow, verb_import, verb_replay, verb_help;
 
 const struct verb *const verb_list[] = {
-#if __has_include("tools/verb_demo.c")
-    &verb_demo,
-#endif
-    &verb_check,
-#if __has_include("tools/verb_rehearse.c")
-    &verb_rehearse,
-#endif
-    &verb_send,     &verb_follow, &verb_import, &verb_replay, &verb_help, NULL,
+    &verb_demo,   &verb_check,  &verb_rehearse, &verb_send, &verb_follow,
+    &verb_import, &verb_replay, &verb_help,     NULL,
 };

@@ -5,6 +5,7 @@
 #include <string.h>
 
 #include "core/math/real.h"
+#include "core/math/ud_body.h"
 
 /* A product whose terms cancel to below this share of their size is rounding,
  * not information. */
@@ -44,58 +45,25 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
 
 /* --- predict ------------------------------------------------------------- */
 
-/* A body that is inlined with a constant n is unrolled by the compiler: same
- * operations, same order, same bits, without the loops. */
-#define UNROLLED static inline __attribute__((always_inline))
-#define FOR_EACH_N(call)                                                       \
-    switch (n) {                                                               \
-    case 1:                                                                    \
-        call(1);                                                               \
-        break;                                                                 \
-    case 2:                                                                    \
-        call(2);                                                               \
-        break;                                                                 \
-    case 3:                                                                    \
-        call(3);                                                               \
-        break;                                                                 \
-    case 4:                                                                    \
-        call(4);                                                               \
-        break;                                                                 \
-    case 6:                                                                    \
-        call(6);                                                               \
-        break;                                                                 \
-    default:                                                                   \
-        call(n);                                                               \
-    }
-
 /* W = Phi U and V = Qu, both upper triangular; below the diagonal nothing is
  * written or read. */
-UNROLLED void spread_body(const int n, const struct rig_kind *kind,
-                          const double *ud, struct kf_work *w)
+UNROLLED void spread(const int n, const struct rig_kind *kind,
+                     const double *ud, const struct transition *t, double *W,
+                     double *V)
 {
-    double *V = w->W + n * n;
     for (int k = 0; k < kind->n_blocks; k++) {
         int at = kind->block[k].at, end = at + kind->block[k].n;
         for (int i = at; i < end; i++) {
-            const double *Phi = w->Phi + i * n;
+            const double *Phi = t->Phi + i * n;
             for (int j = i; j < n; j++) {
                 double sum = j < end ? Phi[j] : 0;
                 for (int c = i; c < end && c < j; c++)
                     sum += Phi[c] * ud[UD_AT(c, j)];
-                w->W[i * n + j] = sum;               /* W = Phi U         */
-                V[i * n + j] = j < end ? w->Qu[i * n + j] : 0;
+                W[i * n + j] = sum;                  /* W = Phi U         */
+                V[i * n + j] = j < end ? t->Qu[i * n + j] : 0;
             }
         }
     }
-}
-
-static void spread(const struct rig_kind *kind, const double *ud,
-                   struct kf_work *w)
-{
-    int n = kind->n;
-#define CALL(n) spread_body(n, kind, ud, w)
-    FOR_EACH_N(CALL)
-#undef CALL
 }
 
 static void move_free(const struct rig_kind *kind, struct kf_work *w,
@@ -116,6 +84,22 @@ static void move_free(const struct rig_kind *kind, struct kf_work *w,
     }
 }
 
+UNROLLED void predict(const int n, const struct rig_kind *kind,
+                      struct kf_work *w, const struct kf *from,
+                      const struct transition *t, struct kf *to)
+{
+    const double *ud = from->v + n;
+    double D[UD_MAX];
+    for (int i = 0; i < n; i++)
+        D[i] = ud[UD_AT(i, i)];
+    spread(n, kind, ud, t, w->W, w->W + n * n);
+    for (int i = 0; i < n; i++)
+        to->v[i] = from->v[i];
+    for (int k = 0; k < kind->n_blocks; k++)
+        block_move(&kind->block[k], t, to->v);
+    ud_gather(n, true, w->W, w->W + n * n, D, t->Qd, to->v + n);
+}
+
 void kf_predict(const struct rig_kind *kind, struct kf_work *w,
                 const struct kf *from, int64_t t_ns, struct kf *to)
 {
@@ -129,23 +113,15 @@ void kf_predict(const struct rig_kind *kind, struct kf_work *w,
     double dt_s = (double)(t_ns - from->t_ns) * 1e-9;
     for (int k = 0; k < kind->n_blocks; k++)
         block_transition(&kind->block[k], dt_s, &t);
-
-    const double *ud = from->v + n;
-    for (int i = 0; i < n; i++)
-        w->w[i] = ud[UD_AT(i, i)];
-    spread(kind, ud, w);
-    if (to != from) {
-        to->n = n;
-        to->n_free = from->n_free;
-        memcpy(to->v, from->v, (size_t)n * sizeof(double));
-        if (from->n_free > 0)
-            memcpy(kf_B(to), from->v + n + UD_SIZE(n),
-                   (size_t)(n * from->n_free) * sizeof(double));
-    }
+    to->n = n;
+    to->n_free = from->n_free;
     to->t_ns = t_ns;
-    for (int k = 0; k < kind->n_blocks; k++)
-        block_move(&kind->block[k], &t, kf_x(to));
-    ud_predict(n, true, w->W, w->W + n * n, w->w, w->Qd, kf_ud(to));
+    if (to != from && from->n_free > 0)
+        memcpy(to->v + n + UD_SIZE(n), from->v + n + UD_SIZE(n),
+               (size_t)(n * from->n_free) * sizeof(double));
+#define CALL(n) predict(n, kind, w, from, &t, to)
+    UD_FOR_N(n, CALL)
+#undef CALL
     if (to->n_free > 0)
         move_free(kind, w, to);
 }
@@ -345,47 +321,58 @@ double kf_loglik(const struct kf_seen *seen)
     return -sum / 2;                                 /* log N(y; 0, S)    */
 }
 
-/* One linear component and nothing undetermined: the gate is decided before
- * anything is touched, so nothing has to be kept. */
-UNROLLED bool scalar_body(const int n, struct kf_work *w, struct kf *f,
-                          const struct sight *s, const double *gate,
-                          struct kf_seen *seen)
+/* The everyday case: linear reads, nothing undetermined.  Components go in one
+ * after the other; their joint NIS decides, then all or nothing stays. */
+UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
+                     const double *gate, struct kf_seen *seen)
 {
-    const struct reads_row *row = &s->reads->row[0];
-    double h[UD_MAX], b[UD_MAX], *x = f->v, at = 0;
-    for (int k = 0; k < n; k++)
-        h[k] = 0;
-    for (int k = 0; k < row->n_terms; k++) {
-        h[row->term[k].state] += row->term[k].value;
-        at += row->term[k].value * x[row->term[k].state];
-    }
-    double y = s->z[0] - at, *ud = f->v + n;         /* y = z - H x       */
-    double S = ud_innovation_variance(n, ud, h, s->r[0]);
-    seen->y[0] = y;
-    seen->n_determined = 0;
-    seen->dof = S > 0;
-    seen->s[0] = S;
-    seen->nis = S > 0 ? y * y / S : 0;               /* y' S^-1 y         */
-    if (gate && S > 0 && !(seen->nis <= gate[1]))
-        return false;
-    if (S > 0) {
-        ud_update(n, ud, h, s->r[0], b);
+    double h[UD_MAX], F[UD_MAX], V[UD_MAX], b[UD_MAX];
+    double was[UD_MAX + UD_SIZE(UD_MAX)], *x = f->v, *ud = f->v + n;
+    int m = s->reads->m;
+    bool may_undo = gate && m > 1;
+    for (int k = 0; may_undo && k < n + UD_SIZE(n); k++)
+        was[k] = x[k];
+    seen->dof = seen->n_determined = 0;
+    seen->nis = 0;
+    for (int i = 0; i < m; i++) {
+        const struct reads_row *row = &s->reads->row[i];
+        double y = s->z[i];
+        seen->y[i] = y;
+        if (y != y)
+            continue;
+        for (int k = 0; k < n; k++)
+            h[k] = 0;
+        for (int k = 0; k < row->n_terms; k++) {
+            h[row->term[k].state] += row->term[k].value;
+            y -= row->term[k].value * x[row->term[k].state];
+        }
+        double S = ud_look(n, ud, h, s->r[i], F, V);
+        seen->y[i] = y;                              /* y = z - H x       */
+        if (!(S > 0))
+            continue;
         double gain = y / S;
+        seen->nis += y * gain;                       /* y' S^-1 y         */
+        seen->s[seen->dof++] = S;
+        if (gate && m == 1 && !(seen->nis <= gate[1]))
+            return false;
+        ud_correct(n, ud, F, V, s->r[i], b);
         for (int k = 0; k < n; k++)
             x[k] += b[k] * gain;                     /* x = x + K y       */
     }
-    (void)w;
-    return true;
+    if (!may_undo || seen->dof == 0 || seen->nis <= gate[seen->dof])
+        return true;
+    for (int k = 0; k < n + UD_SIZE(n); k++)
+        x[k] = was[k];
+    return false;
 }
 
-static bool update_scalar(struct kf_work *w, struct kf *f,
-                          const struct sight *s, const double *gate,
-                          struct kf_seen *seen)
+static bool update_linear(struct kf *f, const struct sight *s,
+                          const double *gate, struct kf_seen *seen)
 {
     int n = f->n;
     bool is_used = false;
-#define CALL(n) is_used = scalar_body(n, w, f, s, gate, seen)
-    FOR_EACH_N(CALL)
+#define CALL(n) is_used = linear(n, f, s, gate, seen)
+    UD_FOR_N(n, CALL)
 #undef CALL
     return is_used;
 }
@@ -398,8 +385,8 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
     int n_free = f->n_free;
     bool is_linear = reads_is_linear(reads);
     struct sight sight = {reads, z, r};
-    if (is_linear && reads->m == 1 && n_free == 0 && z[0] == z[0])
-        return update_scalar(w, f, &sight, gate, seen);
+    if (is_linear && n_free == 0)
+        return update_linear(f, &sight, gate, seen);
 
     memcpy(w->start, kf_x(f), n * sizeof(double));
     memcpy(w->x, kf_x(f), n * sizeof(double));

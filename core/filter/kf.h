@@ -67,7 +67,8 @@ struct kf_seen {
     int n_determined;   /* components used up by a start from data         */
     double nis;         /* y' S^-1 y at the prediction                     */
     double s[READS_MAX]; /* conditional innovation variances: |S| = product */
-    double y[READS_MAX]; /* innovation of each component, NaN if not read  */
+    double y[READS_MAX]; /* innovation of each component, given those before it
+                            in the list; NaN if not read                   */
 };
 
 /* Corrects *f by z (m components in the unit of what they read, NaN = not

@@ -71,7 +71,8 @@ static inline const char *bench_program(const char *given, const char *name)
     return path;
 }
 
-/* --- a measurement on the wire ----------------------------------------------- */
+/* --- a measurement on the wire -----------------------------------------------
+ */
 
 enum { BENCH_DATAGRAM_MAX = 96 };
 
@@ -105,8 +106,12 @@ static inline size_t bench_datagram(uint8_t out[BENCH_DATAGRAM_MAX], int track,
                                     int64_t t_ns, uint32_t seq, double x,
                                     double y)
 {
-    char id[8] = {'t', '-', (char)('0' + track / 100 % 10),
-                  (char)('0' + track / 10 % 10), (char)('0' + track % 10), 0};
+    char id[8] = {'t',
+                  '-',
+                  (char)('0' + track / 100 % 10),
+                  (char)('0' + track / 10 % 10),
+                  (char)('0' + track % 10),
+                  0};
     uint8_t *at = out;
     *at++ = 0x85;
     at = bench_put_text(bench_put_text(at, "sensor"), "fix");
@@ -121,9 +126,10 @@ static inline size_t bench_datagram(uint8_t out[BENCH_DATAGRAM_MAX], int track,
 
 /* What the rig of these measurements says: two constant-velocity axes a
  * track.  Head and tail of the file are the caller's. */
-#define BENCH_Q      1.0
-#define BENCH_R      0.01 /* u = 0.1 m */
-#define BENCH_TRACKS "\"tracks\": {\"t-*\": {\"state\": ["                     \
+#define BENCH_Q 1.0
+#define BENCH_R 0.01 /* u = 0.1 m */
+#define BENCH_TRACKS                                                           \
+    "\"tracks\": {\"t-*\": {\"state\": ["                                      \
     "{\"model\": \"constant-velocity\", \"name\": \"x\", \"unit\": \"m\","     \
     " \"q\": \"1 m2/s3\"},"                                                    \
     "{\"model\": \"constant-velocity\", \"name\": \"y\", \"unit\": \"m\","     \

@@ -48,7 +48,8 @@ static void measure(int i, int axes, double *z)
         z[k] = 0.3 * k + 1e-3 * (double)(i % 13);
 }
 
-/* --- the ideal ------------------------------------------------------------- */
+/* --- the ideal -------------------------------------------------------------
+ */
 
 enum { STATES_MAX = 12 };
 
@@ -91,7 +92,8 @@ static const struct size {
              {6, 2, ideal_12_6_run}};
 enum { N_SIZES = sizeof sizes / sizeof sizes[0] };
 
-/* --- ours ------------------------------------------------------------------- */
+/* --- ours -------------------------------------------------------------------
+ */
 
 struct ours {
     struct rig_kind kind;
@@ -148,7 +150,8 @@ static double run_ours(struct ours *o)
     return (double)(bench_cpu_ns() - begin_ns) / (STEPS * TRACKS);
 }
 
-/* --- side by side ------------------------------------------------------------ */
+/* --- side by side ------------------------------------------------------------
+ */
 
 /* Both must have computed the same thing, or the ratio says nothing. */
 static void compare(const struct ours *o, const double *x, const double *D)
@@ -175,7 +178,8 @@ static double side_by_side(const struct size *size)
     }
     for (int k = 0; k < TRACKS; k++)
         free(ours.f[k]);
-    double ideal_ns = bench_median(a, ROUNDS), ours_ns = bench_median(b, ROUNDS);
+    double ideal_ns = bench_median(a, ROUNDS),
+           ours_ns = bench_median(b, ROUNDS);
     printf("n %2d m %d: ideal %7.1f ns, ours %7.1f ns, ratio %.2f\n",
            size->axes * size->levels, size->axes, ideal_ns, ours_ns,
            ours_ns / ideal_ns);

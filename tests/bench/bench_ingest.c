@@ -23,109 +23,26 @@
 #include <sys/socket.h>
 #include <sys/wait.h>
 
-#include "tests/bench/bench.h"
-#include "tests/bench/ideal.h"
+#include "tests/bench/sink.h"
 
 #ifndef UDP_SEGMENT
 #define UDP_SEGMENT 103
 #endif
-#ifndef UDP_GRO
-#define UDP_GRO 104
-#endif
 
 enum {
-    BATCH = 64,
+    BATCH = SINK_BATCH,
     BURST = 16 * BATCH,
     TRACKS = 128,
     ROUNDS = 7,
     N_SINGLE = 256 * BURST,
-    N_MERGED = 768 * BURST,
-    SLOT_SIZE = 65536,
-    BUFFER_SIZE = 4 << 20
+    N_MERGED = 768 * BURST
 };
 
 static const double limit = 0.80;
 static char folder[] = "/tmp/bench_ingest.XXXXXX";
 
-/* --- the bare sink ---------------------------------------------------------- */
-
-struct sink {
-    struct mmsghdr message[BATCH];
-    struct iovec piece[BATCH];
-    char control[BATCH][256];
-    uint8_t slot[BATCH][SLOT_SIZE];
-};
-
-static int64_t stamp_of(struct msghdr *h, int *segment)
-{
-    int64_t stamp_ns = 0;
-    *segment = 0;
-    for (struct cmsghdr *c = CMSG_FIRSTHDR(h); c; c = CMSG_NXTHDR(h, c)) {
-        if (c->cmsg_level == SOL_SOCKET && c->cmsg_type == SO_TIMESTAMPNS) {
-            struct timespec t;
-            memcpy(&t, CMSG_DATA(c), sizeof t);
-            stamp_ns = (int64_t)t.tv_sec * 1000000000 + t.tv_nsec;
-        } else if (c->cmsg_level == IPPROTO_UDP && c->cmsg_type == UDP_GRO) {
-            memcpy(segment, CMSG_DATA(c), sizeof *segment);
-        }
-    }
-    return stamp_ns;
-}
-
-static int sink_socket(int *port)
-{
-    struct sockaddr_in at = {.sin_family = AF_INET,
-                             .sin_addr.s_addr = htonl(INADDR_LOOPBACK)};
-    socklen_t len = sizeof at;
-    int fd = socket(AF_INET, SOCK_DGRAM, 0), size = BUFFER_SIZE, one = 1;
-    setsockopt(fd, SOL_SOCKET, SO_RCVBUF, &size, sizeof size);
-    setsockopt(fd, SOL_SOCKET, SO_TIMESTAMPNS, &one, sizeof one);
-    setsockopt(fd, IPPROTO_UDP, UDP_GRO, &one, sizeof one);
-    BENCH_NEEDS(bind(fd, (struct sockaddr *)&at, sizeof at) == 0, "bind");
-    BENCH_NEEDS(getsockname(fd, (struct sockaddr *)&at, &len) == 0, "port");
-    *port = ntohs(at.sin_port);
-    return fd;
-}
-
-static void take(struct sink *s, int i, uint64_t *check)
-{
-    int segment;
-    int64_t stamp_ns = stamp_of(&s->message[i].msg_hdr, &segment);
-    size_t len = s->message[i].msg_len;
-    size_t each = segment > 0 ? (size_t)segment : len;
-    for (size_t at = 0; at < len; at += each) {
-        struct ideal_measurement m = {0};
-        if (!ideal_decode(s->slot[i] + at, len - at < each ? len - at : each,
-                          &m))
-            _exit(2);
-        *check += (uint64_t)m.seq + (uint64_t)stamp_ns;
-    }
-    s->message[i].msg_hdr.msg_controllen = sizeof s->control[i];
-}
-
-/* Until it is killed. */
-static void sink_run(int fd)
-{
-    static struct sink s;
-    uint64_t check = 0;
-    for (int i = 0; i < BATCH; i++) {
-        s.piece[i] = (struct iovec){s.slot[i], SLOT_SIZE};
-        s.message[i].msg_hdr.msg_iov = &s.piece[i];
-        s.message[i].msg_hdr.msg_iovlen = 1;
-        s.message[i].msg_hdr.msg_control = s.control[i];
-        s.message[i].msg_hdr.msg_controllen = sizeof s.control[i];
-    }
-    for (;;) {
-        int n = recvmmsg(fd, s.message, BATCH, MSG_WAITFORONE, NULL);
-        if (n < 0 && errno != EINTR)
-            _exit(2);
-        for (int i = 0; i < n; i++)
-            take(&s, i, &check);
-        __asm__ volatile("" : : "r"(check)); /* else nobody needs it */
-    }
-}
-
-/* --- receivers as processes ---------------------------------------------------- */
+/* --- receivers as processes
+ * ---------------------------------------------------- */
 
 struct receiver {
     pid_t pid;
@@ -181,14 +98,15 @@ static void write_rig(void)
     const char *path = in_folder("rig.json");
     FILE *to = fopen(path, "w");
     BENCH_NEEDS(to != NULL, path);
-    fprintf(to,
-            "{\"receive\": {\"udp\": \"127.0.0.1:0\", \"buffer\": \"4 MiB\"},"
-            " \"serve\": {\"tcp\": \"127.0.0.1:0\"},"
-            " \"capture\": {\"folder\": \"captures\"},"
-            " \"order\": {\"horizon\": \"20 ms\", \"ahead\": \"20 ms\"},"
-            " \"limits\": {\"tracks\": %d, \"ids_per_sender\": %d},"
-            BENCH_TRACKS " \"rate\": \"100 kHz\"}}}\n",
-            TRACKS, TRACKS);
+    fprintf(
+        to,
+        "{\"receive\": {\"udp\": \"127.0.0.1:0\", \"buffer\": \"4 MiB\"},"
+        " \"serve\": {\"tcp\": \"127.0.0.1:0\"},"
+        " \"capture\": {\"folder\": \"captures\"},"
+        " \"order\": {\"horizon\": \"20 ms\", \"ahead\": \"20 ms\"},"
+        " \"limits\": {\"tracks\": %d, \"ids_per_sender\": %d}," BENCH_TRACKS
+        " \"rate\": \"100 kHz\"}}}\n",
+        TRACKS, TRACKS);
     BENCH_NEEDS(fclose(to) == 0, path);
 }
 
@@ -227,7 +145,8 @@ static void daemon_start(struct receiver *r, const char *program)
     adopt(r);
 }
 
-/* --- the receiver's queue, as the kernel sees it ----------------------------------- */
+/* --- the receiver's queue, as the kernel sees it
+ * ----------------------------------- */
 
 struct queue {
     unsigned long bytes, drops;
@@ -261,7 +180,8 @@ static struct queue queue_of(int port)
     return q;
 }
 
-/* --- the sender ---------------------------------------------------------------------- */
+/* --- the sender
+ * ---------------------------------------------------------------------- */
 
 struct sender_state {
     int fd;
@@ -319,7 +239,63 @@ static void sender_batch(struct sender_state *s, bool is_merged)
     }
 }
 
-/* --- a round --------------------------------------------------------------------------- */
+/* --- where the CPU goes
+ * ------------------------------------------------------------------ */
+
+enum { THREADS_MAX = 16 };
+
+struct threads {
+    int n;
+    char name[THREADS_MAX][20];
+    double ns[THREADS_MAX];
+};
+
+static bool read_line(int pid, const char *thread, const char *file, char *out,
+                      size_t size)
+{
+    char path[320];
+    snprintf(path, sizeof path, "/proc/%d/task/%s/%s", pid, thread, file);
+    FILE *from = fopen(path, "r");
+    bool ok = from != NULL && fgets(out, (int)size, from) != NULL;
+    if (from != NULL)
+        fclose(from);
+    return ok;
+}
+
+/* CPU of every thread so far, in the order of the folder. */
+static void read_threads(int pid, struct threads *t)
+{
+    char path[64], text[128];
+    snprintf(path, sizeof path, "/proc/%d/task", pid);
+    DIR *folder_of = opendir(path);
+    t->n = 0;
+    for (struct dirent *e; folder_of && (e = readdir(folder_of)) != NULL;) {
+        if (e->d_name[0] == '.' || t->n == THREADS_MAX)
+            continue;
+        if (!read_line(pid, e->d_name, "comm", text, sizeof text))
+            continue;
+        snprintf(t->name[t->n], sizeof t->name[0], "%.*s",
+                 (int)strcspn(text, "\n"), text);
+        if (read_line(pid, e->d_name, "schedstat", text, sizeof text))
+            t->ns[t->n++] = strtod(text, NULL);
+    }
+    if (folder_of)
+        closedir(folder_of);
+}
+
+static void print_threads(const struct threads *before,
+                          const struct threads *after, double n)
+{
+    printf("  of these by thread:");
+    for (int i = 0; i < after->n && before->n == after->n; i++)
+        printf(" %s %.0f ns", after->name[i],
+               (after->ns[i] - before->ns[i]) / n);
+    printf("\n");
+}
+
+/* --- a round
+ * ---------------------------------------------------------------------------
+ */
 
 struct outcome_of_round {
     double cpu_ns, per_s; /* CPU per datagram; datagrams per second           */
@@ -342,9 +318,8 @@ static struct outcome_of_round run_round(const struct receiver *r,
     }
     int64_t end_ns = bench_clock_ns(CLOCK_MONOTONIC);
     usleep(100000); /* the last ones settle and are written */
-    struct outcome_of_round o = {
-        (double)(bench_clock_ns(r->cpu) - cpu_ns) / n,
-        1e9 * n / (double)(end_ns - begin_ns)};
+    struct outcome_of_round o = {(double)(bench_clock_ns(r->cpu) - cpu_ns) / n,
+                                 1e9 * n / (double)(end_ns - begin_ns)};
     close(s.fd);
     unsigned long drops = queue_of(r->port).drops - before.drops;
     if (drops > 0)
@@ -357,6 +332,8 @@ static double compare(const struct receiver *sink,
                       const struct receiver *daemon, bool is_merged)
 {
     double a[ROUNDS], b[ROUNDS], rate_a[ROUNDS], rate_b[ROUNDS];
+    struct threads before, after;
+    read_threads(daemon->pid, &before);
     for (int i = 0; i < ROUNDS; i++) {
         struct outcome_of_round o = run_round(sink, is_merged);
         a[i] = o.cpu_ns;
@@ -372,10 +349,15 @@ static double compare(const struct receiver *sink,
            is_merged ? "64 merged into a send" : "each sent by itself  ",
            sink_ns, bench_median(rate_a, ROUNDS), daemon_ns,
            bench_median(rate_b, ROUNDS), sink_ns / daemon_ns, 1e3 / daemon_ns);
+    read_threads(daemon->pid, &after);
+    print_threads(&before, &after,
+                  ROUNDS * (double)(is_merged ? N_MERGED : N_SINGLE));
     return sink_ns / daemon_ns;
 }
 
-/* --- life -------------------------------------------------------------------------------- */
+/* --- life
+ * --------------------------------------------------------------------------------
+ */
 
 static void clean(void)
 {
@@ -392,22 +374,24 @@ static void stop(const struct receiver *r, int signal_number)
     waitpid(r->pid, &code, 0);
 }
 
+/* What the daemon warned of. */
 static void show_log(void)
 {
     char line[512];
     FILE *from = fopen(in_folder("log"), "r");
-    for (int i = 0; from && i < 10 && fgets(line, sizeof line, from); i++)
-        fprintf(stderr, "  daemon: %s", line);
+    while (from && fgets(line, sizeof line, from))
+        if (strstr(line, " warn ") != NULL)
+            fprintf(stderr, "%s", line);
     if (from)
         fclose(from);
 }
 
 int main(int argc, char **argv)
 {
-    const char *program =
-        bench_program(argc > 1 ? argv[1] : NULL, "ropewalkd");
+    const char *program = bench_program(argc > 1 ? argv[1] : NULL, "ropewalkd");
     struct receiver sink, daemon;
     BENCH_NEEDS(mkdtemp(folder) != NULL, folder);
+    atexit(clean);
     pin();
     daemon_start(&daemon, program);
     sink_start(&sink);
@@ -417,7 +401,6 @@ int main(int argc, char **argv)
     stop(&sink, SIGKILL);
     stop(&daemon, SIGTERM);
     show_log();
-    clean();
     bench_verdict("bench_ingest", ratio, limit, ratio >= limit);
     return 0;
 }

@@ -35,7 +35,8 @@ static const char rig[] =
 static char folder[] = "/tmp/bench_replay.XXXXXX";
 static char rig_path[64], capture_path[64];
 
-/* --- the capture ------------------------------------------------------------- */
+/* --- the capture -------------------------------------------------------------
+ */
 
 static void write_rig(void)
 {
@@ -57,9 +58,9 @@ static void write_capture(void)
     for (int i = 0; i < RECORDS; i++) {
         int64_t a_ns = BEGIN_NS + (int64_t)i * EVERY_NS;
         double phase = 1e-5 * i;
-        size_t len = bench_datagram(body, i % TRACKS, a_ns - 300000,
-                                    (uint32_t)i, 3 * sin(phase),
-                                    3 * cos(phase));
+        size_t len =
+            bench_datagram(body, i % TRACKS, a_ns - 300000, (uint32_t)i,
+                           3 * sin(phase), 3 * cos(phase));
         size_t n = pcap_write_record_head(head, a_ns, &from, &to, body, len);
         fwrite(head, n, 1, file);
         fwrite(body, len, 1, file);
@@ -67,7 +68,8 @@ static void write_capture(void)
     BENCH_NEEDS(!ferror(file) && fclose(file) == 0, capture_path);
 }
 
-/* --- the ideal ---------------------------------------------------------------- */
+/* --- the ideal
+ * ---------------------------------------------------------------- */
 
 struct track {
     struct ideal_4_2_state s;
@@ -143,7 +145,8 @@ static double run_ideal(void)
     return took_ns / RECORDS;
 }
 
-/* --- ours ---------------------------------------------------------------------- */
+/* --- ours
+ * ---------------------------------------------------------------------- */
 
 static double cpu_of(const struct rusage *use)
 {
@@ -196,10 +199,12 @@ int main(int argc, char **argv)
         a[i] = run_ideal();
         b[i] = run_ours(tool, &wall[i]);
     }
-    double ideal_ns = bench_median(a, ROUNDS), ours_ns = bench_median(b, ROUNDS);
+    double ideal_ns = bench_median(a, ROUNDS),
+           ours_ns = bench_median(b, ROUNDS);
     printf("%d records, CPU ns per record, median of %d: ideal %.0f, replay "
            "%.0f (%.0f records/s by the clock)\n",
-           RECORDS, ROUNDS, ideal_ns, ours_ns, 1e9 / bench_median(wall, ROUNDS));
+           RECORDS, ROUNDS, ideal_ns, ours_ns,
+           1e9 / bench_median(wall, ROUNDS));
     double ratio = ideal_ns / ours_ns;
     bench_verdict("bench_replay", ratio, limit, ratio >= limit);
     return 0;

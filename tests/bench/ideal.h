@@ -34,8 +34,7 @@ static inline double ideal_double(const uint8_t *at)
 /* One value by its key; NULL if it is not of the form that bench_datagram
  * writes. */
 static inline const uint8_t *ideal_value(const uint8_t *key, size_t len,
-                                         const uint8_t *at,
-                                         const uint8_t *end,
+                                         const uint8_t *at, const uint8_t *end,
                                          struct ideal_measurement *m)
 {
     if (len == 1 && *key == 'z') {

@@ -27,7 +27,7 @@ struct NAME(axis) {
     double phi[3], Qu[3][3], Qd[3];
 };
 
-INLINE void NAME(fill)(double q, double T, struct NAME(axis) *a)
+INLINE void NAME(fill)(double q, double T, struct NAME(axis) * a)
 {
     double qT = q * T, T2 = T * T;
     a->phi[0] = 1;
@@ -45,7 +45,7 @@ INLINE void NAME(fill)(double q, double T, struct NAME(axis) *a)
 }
 
 /* x = Phi x, W = Phi U, V = Qu. */
-INLINE void NAME(spread)(struct NAME(state) *s, const struct NAME(axis) *a,
+INLINE void NAME(spread)(struct NAME(state) * s, const struct NAME(axis) * a,
                          double W[N][N], double V[N][N])
 {
     UNROLL
@@ -68,7 +68,7 @@ INLINE void NAME(spread)(struct NAME(state) *s, const struct NAME(axis) *a,
     }
 }
 
-INLINE void NAME(predict)(struct NAME(state) *s, double q, double T)
+INLINE void NAME(predict)(struct NAME(state) * s, double q, double T)
 {
     double W[N][N], V[N][N], D[N];
     struct NAME(axis) a;
@@ -105,7 +105,7 @@ INLINE void NAME(predict)(struct NAME(state) *s, double q, double T)
 }
 
 /* State `at` alone is read: h is zero elsewhere, so f is zero before it. */
-INLINE void NAME(update)(const int at, struct NAME(state) *s, double z,
+INLINE void NAME(update)(const int at, struct NAME(state) * s, double z,
                          double r)
 {
     double b[N], y = z - s->x[at], S = r + s->D[at], over = 1 / S;
@@ -130,10 +130,10 @@ INLINE void NAME(update)(const int at, struct NAME(state) *s, double z,
     }
     UNROLL
     for (int i = 0; i < N; i++)
-        s->x[i] += b[i] * (y * over);                /* x = x + K y       */
+        s->x[i] += b[i] * (y * over); /* x = x + K y       */
 }
 
-INLINE void NAME(step)(struct NAME(state) *s, const double *z, double r,
+INLINE void NAME(step)(struct NAME(state) * s, const double *z, double r,
                        double q, double T)
 {
     NAME(predict)(s, q, T);

@@ -4,6 +4,7 @@
 #define TESTS_CHECKS_BED_H
 
 #include <check.h>
+#include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
@@ -88,8 +89,8 @@ static inline void bed_see(struct bed *b, int64_t t_ns, int m, const double *H,
                     (struct reads_term){k, H[i * b->kind.n + k]};
     }
     bed_move(b, t_ns);
-    ck_assert(kf_update(&b->kind, &b->work, b->f, &reads, z, r, NULL,
-                        &b->seen));
+    ck_assert(
+        kf_update(&b->kind, &b->work, b->f, &reads, z, r, NULL, &b->seen));
     b->loglik += kf_loglik(&b->seen);
     b->nis += b->seen.nis;
     b->n_judged += b->seen.dof;

@@ -39,10 +39,8 @@ static void transit(const struct block *b, double dt_s, double *Phi, double *Q)
 
 static struct block block_of(const struct family *f, double q, double tau_s)
 {
-    return (struct block){.model = f->model,
-                          .n = block_states(f->model),
-                          .q = q,
-                          .tau_s = tau_s};
+    return (struct block){
+        .model = f->model, .n = block_states(f->model), .q = q, .tau_s = tau_s};
 }
 
 static double largest(int n, const double *a)
@@ -77,11 +75,11 @@ START_TEST(every_step_from_a_microsecond_to_a_minute_is_exact)
         if (strncmp(values_at(c, "name")->valuestring, f->name,
                     strlen(f->name)) != 0)
             continue;
-        const cJSON *in = values_at(c, "inputs"), *out = values_at(c, "expected");
+        const cJSON *in = values_at(c, "inputs"),
+                    *out = values_at(c, "expected");
         const cJSON *p = values_at(in, "params");
-        double tau_s = f->model == BLOCK_GAUSS_MARKOV
-                           ? 1 / values_number(p, "beta")
-                           : 0;
+        double tau_s =
+            f->model == BLOCK_GAUSS_MARKOV ? 1 / values_number(p, "beta") : 0;
         struct block b = block_of(f, values_number(p, "q"), tau_s);
         values_list(out, "Phi", Phi, N_MAX * N_MAX);
         values_list(out, "Q", Q, N_MAX * N_MAX);
@@ -96,7 +94,8 @@ END_TEST
 /* Phi = Phi_b Phi_a,  Q = Phi_b Q_a Phi_b' + Q_b. */
 static void compose(const struct block *b, double dt_s, double *Phi, double *Q)
 {
-    double P[N_MAX * N_MAX], q[N_MAX * N_MAX], W[N_MAX * N_MAX], was[N_MAX * N_MAX];
+    double P[N_MAX * N_MAX], q[N_MAX * N_MAX], W[N_MAX * N_MAX],
+        was[N_MAX * N_MAX];
     int n = b->n;
     transit(b, dt_s, P, q);
     memcpy(was, Phi, sizeof was);
@@ -119,8 +118,8 @@ static void compose(const struct block *b, double dt_s, double *Phi, double *Q)
         }
 }
 
-static void compose_all(const struct block *b, int n_steps,
-                        const double *steps, double *Phi, double *Q)
+static void compose_all(const struct block *b, int n_steps, const double *steps,
+                        double *Phi, double *Q)
 {
     for (int i = 0; i < b->n * b->n; i++) {
         Phi[i] = i % (b->n + 1) == 0;
@@ -176,7 +175,7 @@ END_TEST
 static void extended(const struct block *b, long double T, double *Phi,
                      double *Q)
 {
-    long double q = b->q, e;
+    long double q = (long double)b->q, tau = (long double)b->tau_s, e;
     switch (b->model) {
     case BLOCK_CONSTANT:
     case BLOCK_RANDOM_WALK:
@@ -184,9 +183,9 @@ static void extended(const struct block *b, long double T, double *Phi,
         Q[0] = (double)(q * T);
         return;
     case BLOCK_GAUSS_MARKOV:
-        e = expl(-T / b->tau_s);
+        e = expl(-T / tau);
         Phi[0] = (double)e;
-        Q[0] = (double)(-q * b->tau_s / 2 * expm1l(-2 * T / b->tau_s));
+        Q[0] = (double)(-q * tau / 2 * expm1l(-2 * T / tau));
         return;
     case BLOCK_CONSTANT_VELOCITY: {
         const long double phi[] = {1, T, 0, 1};
@@ -217,7 +216,7 @@ START_TEST(long_gaps_up_to_a_day_stay_exact)
     struct block b = block_of(&families[_i], 0.4, 5);
     for (int i = 0; i < 4; i++) {
         double Phi[9], Q[9];
-        extended(&b, gaps_s[i], Phi, Q);
+        extended(&b, (long double)gaps_s[i], Phi, Q);
         check(&b, gaps_s[i], Phi, Q);
     }
 }
@@ -239,8 +238,8 @@ Suite *suite(void)
 {
     Suite *s = suite_create("discretisation");
     TCase *t = tcase_create("discretisation");
-    tcase_add_loop_test(
-        t, every_step_from_a_microsecond_to_a_minute_is_exact, 0, N_FAMILIES);
+    tcase_add_loop_test(t, every_step_from_a_microsecond_to_a_minute_is_exact,
+                        0, N_FAMILIES);
     tcase_add_test(t, four_uneven_steps_are_one_step_as_published);
     tcase_add_loop_test(t,
                         any_split_of_a_gap_gives_the_same_transition_and_noise,

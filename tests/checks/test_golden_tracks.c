@@ -100,8 +100,7 @@ START_TEST(three_sensors_with_a_drifting_offset_are_exact_at_every_event)
     for (int s = 0; s < 3; s++)
         ck_assert_double_le(
             fabs(nis[s] / n[s] -
-                 values_number(values_at(out, "nis_mean_by_sensor"),
-                               names[s])),
+                 values_number(values_at(out, "nis_mean_by_sensor"), names[s])),
             1e-11);
     bed_free(b);
 }

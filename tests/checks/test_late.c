@@ -19,7 +19,7 @@ struct lane {
     struct run *run;
     void *memory;
     uint64_t n_live, n_settled;
-    double x[2], P[4];             /* of the newest live estimate         */
+    double x[2], P[4]; /* of the newest live estimate         */
     double settled_x[2], settled_P[4];
     int64_t t_ns, settled_t_ns;
     double ud[UD_SIZE(2)];
@@ -129,7 +129,8 @@ static void check_state(const double *x, const double *P, const cJSON *want)
     CHECK_COVARIANCE(2, P, want_P, near);
 }
 
-/* --- one step late ---------------------------------------------------------- */
+/* --- one step late ----------------------------------------------------------
+ */
 
 static const char *const one_step[] = {"one-step-lag OOSM q=0.1",
                                        "one-step-lag OOSM q=4",
@@ -143,8 +144,7 @@ START_TEST(one_step_late_gives_the_exact_state)
     const cJSON *in = values_at(c, "inputs"), *out = values_at(c, "expected");
     double x0[2], r[3] = {values_number(in, "R"), 1, 1};
     values_list(in, "x0", x0, 2);
-    struct lane *l =
-        lane_new(values_number(in, "q"), x0, var0, r, 1000000000);
+    struct lane *l = lane_new(values_number(in, "q"), x0, var0, r, 1000000000);
     double arrival_s = 0;
     const cJSON *m;
     cJSON_ArrayForEach(m, values_at(in, "arrival_order"))
@@ -164,7 +164,8 @@ START_TEST(one_step_late_gives_the_exact_state)
 }
 END_TEST
 
-/* --- the log of 48 events --------------------------------------------------- */
+/* --- the log of 48 events ---------------------------------------------------
+ */
 
 static struct lane *log_lane(const cJSON *in, int64_t horizon_ns)
 {
@@ -184,10 +185,10 @@ START_TEST(after_every_arrival_the_state_is_the_exact_one)
 {
     cJSON *all = values_load("05-out-of-sequence");
     const cJSON *c = values_case(all, "48-event log");
-    const cJSON *events = values_at(values_at(c, "inputs"),
-                                    "events_in_arrival_order");
-    const cJSON *steps = values_at(
-        values_at(values_at(c, "expected"), "horizon_1s"), "steps");
+    const cJSON *events =
+        values_at(values_at(c, "inputs"), "events_in_arrival_order");
+    const cJSON *steps =
+        values_at(values_at(values_at(c, "expected"), "horizon_1s"), "steps");
     struct lane *l = log_lane(values_at(c, "inputs"), 1000000000);
     uint64_t n_used = 0, n_late = 0;
     int64_t newest_ns = 0;
@@ -223,8 +224,8 @@ START_TEST(a_wide_horizon_uses_everything_and_gives_the_likelihood)
     const cJSON *c = values_case(all, "48-event log");
     const cJSON *out = values_at(c, "expected"), *event;
     struct lane *l = log_lane(values_at(c, "inputs"), 3000000000);
-    cJSON_ArrayForEach(event, values_at(values_at(c, "inputs"),
-                                        "events_in_arrival_order"))
+    cJSON_ArrayForEach(
+        event, values_at(values_at(c, "inputs"), "events_in_arrival_order"))
         feed_event(l, event);
     const cJSON *last = cJSON_GetArrayItem(values_at(out, "reprocess_all"), 0);
     check_state(l->x, l->P, last);
@@ -248,8 +249,8 @@ START_TEST(a_query_after_the_log_is_a_prediction)
     cJSON *all = values_load("05-out-of-sequence");
     const cJSON *c = values_case(all, "48-event log"), *event, *want = NULL;
     struct lane *l = log_lane(values_at(c, "inputs"), 3000000000);
-    cJSON_ArrayForEach(event, values_at(values_at(c, "inputs"),
-                                        "events_in_arrival_order"))
+    cJSON_ArrayForEach(
+        event, values_at(values_at(c, "inputs"), "events_in_arrival_order"))
         feed_event(l, event);
     want = cJSON_GetArrayItem(
         values_at(values_case(all, "state queried"), "expected"), 4);
@@ -271,7 +272,8 @@ START_TEST(a_query_after_the_log_is_a_prediction)
 }
 END_TEST
 
-/* --- a certified straight line, out of order ---------------------------------- */
+/* --- a certified straight line, out of order
+ * ---------------------------------- */
 
 /* NIST Statistical Reference Datasets, Norris: 36 points, x taken as time, in
  * the order of the file; the place at 0 s is B0, the rate B1. */

@@ -77,8 +77,7 @@ START_TEST(states_variances_and_innovations_of_every_year_are_as_published)
         check_close(b->seen.s[0], S[i]);
     }
     ck_assert_int_eq(b->n_judged, YEARS);
-    ck_assert_double_le(
-        fabs(b->loglik - values_number(out, "loglik")), 1e-10);
+    ck_assert_double_le(fabs(b->loglik - values_number(out, "loglik")), 1e-10);
     ck_assert_double_le(fabs(b->loglik - -641.5855784584), 5e-9);
     bed_free(b);
 }
@@ -101,8 +100,8 @@ START_TEST(a_start_from_data_is_the_exact_diffuse_one)
         check_close(variance(b), P[i]);
     }
     ck_assert_int_eq(b->n_judged, YEARS - 1);
-    ck_assert_double_le(
-        fabs(b->loglik - values_number(out, "loglik_t2_to_n")), 1e-10);
+    ck_assert_double_le(fabs(b->loglik - values_number(out, "loglik_t2_to_n")),
+                        1e-10);
     bed_free(b);
 }
 END_TEST
@@ -128,8 +127,7 @@ START_TEST(missing_years_are_bridged_as_published)
         check_close(kf_x(b->f)[0], a[i]);
         check_close(variance(b), P[i]);
     }
-    ck_assert_double_le(
-        fabs(b->loglik - values_number(out, "loglik")), 1e-10);
+    ck_assert_double_le(fabs(b->loglik - values_number(out, "loglik")), 1e-10);
     ck_assert_double_le(fabs(b->loglik - -389.6269775255986), 1e-10);
     bed_free(b);
 }
@@ -138,7 +136,7 @@ END_TEST
 /* The same, gaps crossed at once, or no reading (NaN) in every missing year. */
 START_TEST(a_gap_in_one_stride_or_of_no_readings_changes_nothing)
 {
-    double a[YEARS], P[YEARS], none = NAN;
+    double a[YEARS], P[YEARS], none = (double)NAN;
     const cJSON *out = expected("Nile with years 1891-1910", "a_filt", a);
     expected("Nile with years 1891-1910", "P_filt", P);
     struct bed *b = level(true);
@@ -151,8 +149,7 @@ START_TEST(a_gap_in_one_stride_or_of_no_readings_changes_nothing)
     check_close(kf_x(b->f)[0], a[YEARS - 1]);
     check_close(variance(b), P[YEARS - 1]);
     ck_assert_int_eq(b->n_judged, 60);
-    ck_assert_double_le(
-        fabs(b->loglik - values_number(out, "loglik")), 1e-10);
+    ck_assert_double_le(fabs(b->loglik - values_number(out, "loglik")), 1e-10);
     bed_free(b);
 }
 END_TEST
@@ -172,8 +169,8 @@ START_TEST(forecasts_at_asked_times_are_predictions)
     ck_assert_double_le(fabs(first - 5501.25794181), 5e-9);
     for (int i = 0; i < 4; i++) {
         struct kf *f = calloc(1, kf_bytes(&b->kind));
-        kf_predict(&b->kind, &b->work, b->f,
-                   (int64_t)(99e9 + asked[i] * 1e9), f);
+        kf_predict(&b->kind, &b->work, b->f, (int64_t)(99e9 + asked[i] * 1e9),
+                   f);
         check_close(kf_x(f)[0], mean);
         check_close(kf_ud(f)[0], first + 1469.1 * (asked[i] - 1));
         double S = ud_innovation_variance(1, kf_ud(f), &one, r);

@@ -37,13 +37,14 @@ static void check_state(const struct bed *b, const cJSON *want, double tol)
     CHECK_COVARIANCE(2, got, P, tol);
 }
 
-/* --- starts ------------------------------------------------------------------ */
+/* --- starts ------------------------------------------------------------------
+ */
 
 START_TEST(two_measurements_start_place_and_rate)
 {
     const cJSON *c = values_case(all, "two-point differencing");
-    const cJSON *row = cJSON_GetArrayItem(
-        values_at(values_at(c, "expected"), "rows"), _i);
+    const cJSON *row =
+        cJSON_GetArrayItem(values_at(values_at(c, "expected"), "rows"), _i);
     double z1 = values_number(row, "z1"), z2 = values_number(row, "z2");
     double r = values_number(row, "R");
     struct bed *b = axis(values_number(row, "q"));
@@ -116,7 +117,8 @@ START_TEST(no_prior_is_the_limit_of_wide_ones)
 }
 END_TEST
 
-/* --- one instant -------------------------------------------------------------- */
+/* --- one instant
+ * -------------------------------------------------------------- */
 
 static struct bed *prior(const cJSON *in)
 {
@@ -141,8 +143,8 @@ START_TEST(any_order_at_one_instant_gives_the_same_answer)
     double H[6], r[3], z[3];
     int64_t t_ns = values_ns(values_number(in, "t"));
     for (int i = 0; i < 3; i++) {
-        const cJSON *m = cJSON_GetArrayItem(values_at(in, "meas"),
-                                            orders[_i % 6][i]);
+        const cJSON *m =
+            cJSON_GetArrayItem(values_at(in, "meas"), orders[_i % 6][i]);
         values_list(m, "H", H + 2 * i, 2);
         r[i] = values_number(m, "R");
         z[i] = values_number(m, "z");
@@ -152,8 +154,8 @@ START_TEST(any_order_at_one_instant_gives_the_same_answer)
     if (_i == 6)
         bed_see(b, t_ns, 3, H, z, r);
     check_state(b, out, 1e-12);
-    ck_assert_double_le(
-        fabs(b->loglik - values_number(out, "loglik_total")), 1e-12);
+    ck_assert_double_le(fabs(b->loglik - values_number(out, "loglik_total")),
+                        1e-12);
     bed_free(b);
 }
 END_TEST

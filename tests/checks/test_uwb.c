@@ -17,7 +17,8 @@ enum { TRUTH_MAX = 2000, ROWS_MAX = 11000, SENSORS = 5 };
 static const char *const sensors[SENSORS] = {"gnss", "uwb_A12", "uwb_A3",
                                              "uwb_A5", "uwb_A9"};
 
-/* --- the truth --------------------------------------------------------------- */
+/* --- the truth ---------------------------------------------------------------
+ */
 
 struct truth {
     int n;
@@ -57,7 +58,8 @@ static bool truth_at(const struct truth *truth, int64_t t_ns, double *x,
     return true;
 }
 
-/* --- how far off -------------------------------------------------------------- */
+/* --- how far off
+ * -------------------------------------------------------------- */
 
 struct score {
     struct truth truth;
@@ -78,8 +80,8 @@ static void take(void *ctx, const cJSON *line)
     if (!truth_at(&score->truth, t_ns, &x, &y))
         return;
     score->n++;
-    score->square += (state[0] - x) * (state[0] - x) +
-                     (state[2] - y) * (state[2] - y);
+    score->square +=
+        (state[0] - x) * (state[0] - x) + (state[2] - y) * (state[2] - y);
 }
 
 /* 2-D root-mean-square error over every settled estimate. */
@@ -117,7 +119,8 @@ START_TEST(without_a_gate_false_ranges_lead_astray)
 }
 END_TEST
 
-/* --- who came late ------------------------------------------------------------ */
+/* --- who came late
+ * ------------------------------------------------------------ */
 
 struct row {
     int64_t t_ns, a_ns;

@@ -94,7 +94,8 @@ static inline int64_t values_ns(double t_s)
     return llround(t_s * 1e9);
 }
 
-/* --- nearness -------------------------------------------------------------- */
+/* --- nearness --------------------------------------------------------------
+ */
 
 /* max |got - want| / max(1, |want|). */
 static inline double values_off(int n, const double *got, const double *want)

@@ -138,6 +138,9 @@ START_TEST(a_change_is_laid_over_the_rig)
     ck_assert_ptr_nonnull(strstr(tool_out, "reads level in mm, u 2 mm"));
     ck_assert_int_eq(TOOL("check", rig, "--set", "sensors.gauge.uu=2 mm"),
                      EXIT_BAD_SETTINGS);
+    ck_assert_int_eq(TOOL("check", rig, "--without", "gauge"),
+                     EXIT_BAD_SETTINGS);
+    ck_assert_ptr_nonnull(strstr(tool_said, "no sensors"));
     ck_assert_int_eq(TOOL("check", rig, "--set", "nothing"), EXIT_BAD_SETTINGS);
     ck_assert_ptr_nonnull(strstr(tool_said, "needs PATH=VALUE"));
 }

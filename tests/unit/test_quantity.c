@@ -176,6 +176,9 @@ START_TEST(a_number_is_split_from_its_unit)
     ck_assert_str_eq(unit, "mm");
     ck_assert(quantity_split("5 eV", &value, &unit));
     ck_assert_str_eq(unit, "eV");
+    ck_assert(quantity_split("5eV", &value, &unit));
+    ck_assert_double_eq(value, 5);
+    ck_assert_str_eq(unit, "eV");
     ck_assert(quantity_split("-3", &value, &unit));
     ck_assert_str_eq(unit, "");
     ck_assert(!quantity_split(".5 m", &value, &unit));
