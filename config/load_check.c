@@ -47,9 +47,11 @@ static bool is_choice(const char *choices, const char *text)
     return false;
 }
 
-/* Models that are planned are no choices, yet refused by their name. */
+/* Words that are planned are no choices, yet refused by their name. */
 static bool is_planned_choice(const struct table_row *row, const char *text)
 {
+    if (strcmp(row->path, "sensors.*.time.stamp") == 0)
+        return strcmp(text, "counter") == 0;
     return strcmp(row->path, "tracks.*.state.model") == 0 &&
            is_choice("oscillator|linear|singer|coordinated-turn", text);
 }
@@ -154,8 +156,9 @@ static void check_value(struct loading *l, const cJSON *node,
         return;
     }
     if (!has_type(node, row)) {
-        loading_error(l, node, "\"%.64s\" must be %s; meant here: %s", key,
-                      table_takes(row), row->help);
+        loading_error(l, node, "\"%.64s\" must be %s; meant here: %.*s", key,
+                      table_takes(row), (int)strcspn(row->help, ";"),
+                      row->help);
         return;
     }
     if (row->value == TABLE_CHOICE)

@@ -134,6 +134,25 @@ static void capture(struct loading *l, const cJSON *object)
                       "it larger");
 }
 
+/* A measurement is older than its stamp by the delay before it travels. */
+static void delays(struct loading *l)
+{
+    const struct rig *rig = &l->s->rig;
+    const cJSON *sensor;
+    cJSON_ArrayForEach(sensor, loading_get(l->root, "sensors"))
+    {
+        const cJSON *node = loading_get(loading_get(sensor, "time"), "delay");
+        int i = rig_find_sensor(rig, sensor->string, strlen(sensor->string));
+        if (node == NULL || i < 0 || rig->sensor[i].delay_ns == 0 ||
+            rig->sensor[i].delay_ns < rig->horizon_ns)
+            continue;
+        loading_error(l, node, "a delay of %g ms reaches the horizon of %g "
+                      "ms: all would be too late; make order.horizon longer",
+                      (double)rig->sensor[i].delay_ns * 1e-6,
+                      (double)rig->horizon_ns * 1e-6);
+    }
+}
+
 static void order(struct loading *l, const cJSON *object)
 {
     struct rig *rig = &l->s->rig;
@@ -141,6 +160,8 @@ static void order(struct loading *l, const cJSON *object)
     is_ok = loading_time(l, object, "order.horizon", 0, &rig->horizon_ns) &&
             is_ok;
     loading_time(l, object, "order.ahead", 0, &rig->ahead_ns);
+    if (is_ok)
+        delays(l);
     if (!is_ok || rig->hold_ns <= rig->horizon_ns)
         return;
     const cJSON *hold = loading_get(object, "hold");

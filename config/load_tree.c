@@ -134,18 +134,28 @@ static void mark(cJSON *node, int place)
         mark(child, place);
 }
 
+/* The element of a list at this place from 0, or with this "name". */
+static cJSON *element(const cJSON *list, const char *path, size_t len)
+{
+    size_t digits = strspn(path, "0123456789");
+    if (digits == len && len > 0 && len < 6)
+        return cJSON_GetArrayItem(list, (int)strtol(path, NULL, 10));
+    for (cJSON *each = list->child; each != NULL; each = each->next) {
+        const char *name = loading_text(loading_get(each, "name"));
+        if (len > 0 && strlen(name) == len && strncmp(name, path, len) == 0)
+            return each;
+    }
+    return NULL;
+}
+
 /* The child whose key begins the path; the longest wins, since names may
  * hold dots. */
 static cJSON *step(const cJSON *node, const char *path, size_t *len)
 {
     cJSON *best = NULL;
     *len = strcspn(path, ".");
-    if (cJSON_IsArray(node)) {
-        char *end;
-        unsigned long i = strtoul(path, &end, 10);
-        bool is_index = end == path + *len && *len > 0 && *len < 6;
-        return is_index ? cJSON_GetArrayItem(node, (int)i) : NULL;
-    }
+    if (cJSON_IsArray(node))
+        return element(node, path, *len);
     for (cJSON *child = node->child; child != NULL; child = child->next) {
         size_t n = child->string != NULL ? strlen(child->string) : 0;
         if (n > 0 && strncmp(path, child->string, n) == 0 &&
@@ -164,8 +174,6 @@ static cJSON *change_value(const struct settings_change *change)
     size_t at;
     const char *what;
     cJSON *node = NULL;
-    if (textpos_bad_utf8(change->value, strlen(change->value)) >= 0)
-        return NULL;
     if (syntax_check(change->value, &at, &what))
         node = cJSON_ParseWithOpts(change->value, NULL, 1);
     return node != NULL ? node : cJSON_CreateString(change->value);
@@ -183,6 +191,21 @@ static void no_such(struct loading *l, const cJSON *group, const cJSON *mine,
             list[n++] = each->string;
     }
     loading_unknown(l, mine, false, what, name, list);
+}
+
+/* Puts the value into the node in the place of the child, if any. */
+static void put_last(struct loading *l, cJSON *node, cJSON *child,
+                     const char *key, cJSON *value)
+{
+    if (cJSON_IsArray(node)) {
+        cJSON_ReplaceItemViaPointer(node, child, value);
+    } else if (child == NULL) {
+        add(l, node, key, value);
+    } else {
+        cJSON_ReplaceItemInObjectCaseSensitive(node, key, value);
+        if (value->string == NULL)
+            l->is_out_of_memory = true; /* its key could not be copied */
+    }
 }
 
 /* Puts the value at the end of the path, making objects on the way. */
@@ -204,18 +227,14 @@ static void put(struct loading *l, const char *path, cJSON *value)
             break;
         }
         if ((child == NULL && !cJSON_IsObject(node)) || len == 0) {
-            loading_error(l, value, "there is no \"%.64s\"; name keys by "
-                          "dots, places in a list from 0", path);
+            loading_error(l, value, "there is no \"%.64s\"; join keys by "
+                          "dots, a block by its name or place from 0", path);
             break;
         }
-        if (is_last && cJSON_IsArray(node))
-            cJSON_ReplaceItemViaPointer(node, child, value);
-        else if (is_last && child != NULL)
-            cJSON_ReplaceItemInObjectCaseSensitive(node, key, value);
-        else if (is_last)
-            add(l, node, key, value);
-        if (is_last)
+        if (is_last) {
+            put_last(l, node, child, key, value);
             return;
+        }
         if (child == NULL) {
             child = cJSON_CreateObject();
             if (child != NULL)
@@ -240,11 +259,16 @@ void loading_change(struct loading *l)
     for (int i = 0; i < l->n_changes; i++) {
         if (is_removal(&l->changes[i]))
             continue;
-        cJSON *value = change_value(&l->changes[i]);
+        const char *text = l->changes[i].value;
         cJSON nothing = {.valueint = LOADING_CHANGE - i};
-        if (value == NULL) {
+        if (textpos_bad_utf8(text, strlen(text)) >= 0) {
             loading_error(l, &nothing, "the value is not UTF-8; correct it");
             continue;
+        }
+        cJSON *value = change_value(&l->changes[i]);
+        if (value == NULL) {
+            l->is_out_of_memory = true;
+            return;
         }
         mark(value, LOADING_CHANGE - i);
         put(l, l->changes[i].path, value);

@@ -154,6 +154,43 @@ static status translate(const char *unit, char out[UNIT_TEXT_SIZE],
     return ST_OK;
 }
 
+static bool ends_unit(char c)
+{
+    return is_letter(c) || c == ')' || c == '%';
+}
+
+/* True if digits at s are the power of what stands before them. */
+static bool is_power(const char *unit, const char *s)
+{
+    size_t n = (size_t)(s - unit);
+    if (n >= 2 && is_sign(s - 2))
+        return false;
+    if (n >= 2 && s[-1] == '-') {
+        s--;
+        n--;
+    }
+    if (n >= 2 && (s[-1] == '^' || (s[-1] == '*' && s[-2] == '*')))
+        return true;
+    return n >= 1 && ends_unit(s[-1]);
+}
+
+/* "2 3 mm" would be 6 mm: in a unit, digits are powers or the 1 of 1/s. */
+static bool has_factor(const char *unit)
+{
+    for (const char *s = unit; *s != '\0'; s++) {
+        size_t n = strspn(s, "0123456789");
+        if (n == 0)
+            continue;
+        char after = s[n + strspn(s + n, " ")];
+        bool is_one = n == 1 && *s == '1' && (s == unit || s[-1] == '(') &&
+                      (after == '\0' || after == '/' || after == ')');
+        if (!is_one && !is_power(unit, s))
+            return true;
+        s += n - 1;
+    }
+    return false;
+}
+
 static status parse_unit(struct quantity_units *u, const char *unit,
                          ut_unit **out, struct err *err)
 {
@@ -161,7 +198,12 @@ static status parse_unit(struct quantity_units *u, const char *unit,
     status st = translate(unit, text, err);
     if (st != ST_OK)
         return st;
-    *out = strpbrk(text, "@\"'") != NULL
+    bool has_reference = strpbrk(text, "@\"'") != NULL;
+    if (!has_reference && has_factor(unit))
+        return err_set(err, ST_SCHEMA,
+                       "the unit \"%.64s\" holds a number; digits in a unit "
+                       "are powers, like m/s2", unit);
+    *out = has_reference
                ? NULL
                : ut_parse(u->system, text, UT_UTF8);
     if (*out == NULL || text[0] == '\0')

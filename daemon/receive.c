@@ -14,7 +14,7 @@
 #define UDP_GRO 104
 #endif
 
-enum { CONTROL_SIZE = 256, DRAIN_BATCHES = 1024 };
+enum { CONTROL_SIZE = 256, DRAIN_NS = 200000000 };
 
 struct receive {
     uv_poll_t poll;
@@ -109,13 +109,13 @@ static void on_readable(uv_poll_t *poll, int result, int events)
     receive_look(poll->data);
 }
 
-/* Whoever sends without a pause must not keep the daemon from stopping: what
- * lay in the buffer fits the bound, what comes meanwhile need not. */
+/* What lies in the buffer is laid in far less than the bound; whoever sends
+ * without a pause must not keep the daemon from stopping. */
 void receive_drain(struct receive *r)
 {
-    for (int i = 0; i < DRAIN_BATCHES; i++)
-        if (!take_batch(r))
-            break;
+    int64_t until_ns = line_read().mono_ns + DRAIN_NS;
+    while (take_batch(r) && line_read().mono_ns < until_ns)
+        ;
 }
 
 static status set_up(struct receive *r, int64_t buffer_bytes, struct err *err)

@@ -93,8 +93,8 @@ static void take_event(struct demo_view *v, const cJSON *message)
     const char *t = text_of(message, "t");
     char why[DEMO_VIEW_TEXT];
     int64_t t_ns;
-    if (!instant_parse(t, strlen(t), &t_ns))
-        return;
+    if (!instant_parse(t, strlen(t), &t_ns) || t_ns < v->begin_ns)
+        return; /* before the rehearsal nothing speaks yet */
     join_reasons(cJSON_GetObjectItemCaseSensitive(message, "why"), why);
     snprintf(v->event, sizeof v->event, "%6.1f s  %s: %s %s%s%s%s",
              (double)(t_ns - v->begin_ns) * 1e-9, text_of(message, "track"),

@@ -45,6 +45,97 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
 
 /* --- predict ------------------------------------------------------------- */
 
+/* Kinds that consist of axes of one kinematic model only are the everyday case:
+ * with n and the states per axis known, everything below unrolls. */
+static int levels_of(const struct rig_kind *kind)
+{
+    enum block_model model = kind->block[0].model;
+    for (int k = 1; k < kind->n_blocks; k++)
+        if (kind->block[k].model != model)
+            return 0;
+    return model == BLOCK_CONSTANT_VELOCITY       ? 2
+           : model == BLOCK_CONSTANT_ACCELERATION ? 3
+                                                  : 0;
+}
+
+/* The same transition as block.c's, laid out for constants: Phi's and Qu's
+ * entries depend on how far right of the diagonal they stand. */
+UNROLLED void predict_axes(const int n, const int levels,
+                           const struct rig_kind *kind, double *W, double *V,
+                           const struct kf *from, double T, struct kf *to)
+{
+    const double *ud = from->v + n;
+    double D[UD_MAX], Qd[UD_MAX];
+    const double phi[3] = {1, T, T * T / 2};         /* Phi               */
+    const double qu[3] = {1, T / 2, T * T / 6};      /* Qu                */
+    const double T2 = T * T;
+    for (int i = 0; i < n; i++) {
+        int level = i % levels, end = i - level + levels;
+        double qT = kind->block[i / levels].q * T, x = 0;
+        D[i] = ud[UD_AT(i, i)];
+        Qd[i] = level == levels - 1   ? qT
+                : level == levels - 2 ? qT * T2 / 12
+                                      : qT * T2 * T2 / 720;
+        for (int c = i; c < end; c++)
+            x += phi[c - i] * from->v[c];            /* x = Phi x         */
+        to->v[i] = x;
+        for (int j = i; j < n; j++) {
+            double sum = j < end ? phi[j - i] : 0;
+            for (int c = i; c < end && c < j; c++)
+                sum += phi[c - i] * ud[UD_AT(c, j)];
+            W[i * n + j] = sum;                      /* W = Phi U         */
+            V[i * n + j] = j < end ? qu[j - i] : 0;
+        }
+    }
+    ud_gather(n, true, W, V, D, Qd, to->v + n);
+}
+
+/* One instance each; arrays of their own size stay in registers. */
+#define INSTANCE(n, levels)                                                    \
+    static void predict_##n##_##levels(const struct rig_kind *kind,            \
+                                       const struct kf *from, double dt_s,     \
+                                       struct kf *to)                          \
+    {                                                                          \
+        double W[(n) * (n)], V[(n) * (n)];                                     \
+        predict_axes(n, levels, kind, W, V, from, dt_s, to);                   \
+    }
+
+INSTANCE(2, 2)
+INSTANCE(4, 2)
+INSTANCE(6, 2)
+INSTANCE(3, 3)
+INSTANCE(6, 3)
+INSTANCE(9, 3)
+
+/* False when there is no such instance. */
+static bool predict_kinematic(const struct rig_kind *kind,
+                              const struct kf *from, double dt_s,
+                              struct kf *to)
+{
+    switch (kind->n * 10 + levels_of(kind)) {
+    case 22:
+        predict_2_2(kind, from, dt_s, to);
+        return true;
+    case 42:
+        predict_4_2(kind, from, dt_s, to);
+        return true;
+    case 62:
+        predict_6_2(kind, from, dt_s, to);
+        return true;
+    case 33:
+        predict_3_3(kind, from, dt_s, to);
+        return true;
+    case 63:
+        predict_6_3(kind, from, dt_s, to);
+        return true;
+    case 93:
+        predict_9_3(kind, from, dt_s, to);
+        return true;
+    default:
+        return false;
+    }
+}
+
 /* W = Phi U and V = Qu, both upper triangular; below the diagonal nothing is
  * written or read. */
 UNROLLED void spread(const int n, const struct rig_kind *kind,
@@ -111,6 +202,12 @@ void kf_predict(const struct rig_kind *kind, struct kf_work *w,
     }
     struct transition t = {n, w->Phi, w->Qu, w->Qd};
     double dt_s = (double)(t_ns - from->t_ns) * 1e-9;
+    if (from->n_free == 0 && predict_kinematic(kind, from, dt_s, to)) {
+        to->n = n;
+        to->n_free = 0;
+        to->t_ns = t_ns;
+        return;
+    }
     for (int k = 0; k < kind->n_blocks; k++)
         block_transition(&kind->block[k], dt_s, &t);
     to->n = n;
@@ -324,14 +421,14 @@ double kf_loglik(const struct kf_seen *seen)
 /* The everyday case: linear reads, nothing undetermined.  Components go in one
  * after the other; their joint NIS decides, then all or nothing stays. */
 UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
-                     const double *gate, struct kf_seen *seen)
+                     const double *gate, double *was, struct kf_seen *seen)
 {
     double h[UD_MAX], F[UD_MAX], V[UD_MAX], b[UD_MAX];
-    double was[UD_MAX + UD_SIZE(UD_MAX)], *x = f->v, *ud = f->v + n;
+    double *x = f->v, *ud = f->v + n;
     int m = s->reads->m;
     bool may_undo = gate && m > 1;
-    for (int k = 0; may_undo && k < n + UD_SIZE(n); k++)
-        was[k] = x[k];
+    if (may_undo)
+        memcpy(was, x, (size_t)(n + UD_SIZE(n)) * sizeof *x);
     seen->dof = seen->n_determined = 0;
     seen->nis = 0;
     for (int i = 0; i < m; i++) {
@@ -361,17 +458,17 @@ UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
     }
     if (!may_undo || seen->dof == 0 || seen->nis <= gate[seen->dof])
         return true;
-    for (int k = 0; k < n + UD_SIZE(n); k++)
-        x[k] = was[k];
+    memcpy(x, was, (size_t)(n + UD_SIZE(n)) * sizeof *x);
     return false;
 }
 
-static bool update_linear(struct kf *f, const struct sight *s,
-                          const double *gate, struct kf_seen *seen)
+static bool update_linear(struct kf_work *w, struct kf *f,
+                          const struct sight *s, const double *gate,
+                          struct kf_seen *seen)
 {
     int n = f->n;
     bool is_used = false;
-#define CALL(n) is_used = linear(n, f, s, gate, seen)
+#define CALL(n) is_used = linear(n, f, s, gate, w->W, seen)
     UD_FOR_N(n, CALL)
 #undef CALL
     return is_used;
@@ -386,7 +483,7 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
     bool is_linear = reads_is_linear(reads);
     struct sight sight = {reads, z, r};
     if (is_linear && n_free == 0)
-        return update_linear(f, &sight, gate, seen);
+        return update_linear(w, f, &sight, gate, seen);
 
     memcpy(w->start, kf_x(f), n * sizeof(double));
     memcpy(w->x, kf_x(f), n * sizeof(double));

@@ -6,14 +6,6 @@
 
 #include "core/math/real.h"
 
-bool reads_is_linear(const struct reads *r)
-{
-    for (int i = 0; i < r->m; i++)
-        if (r->row[i].kind != READS_LINEAR)
-            return false;
-    return true;
-}
-
 bool reads_wraps(const struct reads *r, int i)
 {
     return r->row[i].kind == READS_BEARING;

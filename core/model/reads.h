@@ -41,7 +41,13 @@ struct reads {
     struct reads_row row[READS_MAX];
 };
 
-bool reads_is_linear(const struct reads *r);
+static inline bool reads_is_linear(const struct reads *r)
+{
+    for (int i = 0; i < r->m; i++)
+        if (r->row[i].kind != READS_LINEAR)
+            return false;
+    return true;
+}
 
 /* True if row i reads an angle: its difference is wrapped to (-pi, pi]. */
 bool reads_wraps(const struct reads *r, int i);

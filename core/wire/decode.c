@@ -5,42 +5,27 @@
 
 #include "core/wire/decode_form.h"
 
+/* 1: may stand first in an id; 2: only later. */
+static const uint8_t id_letter[256] = {
+    ['-'] = 2, ['.'] = 2, [':'] = 2, ['_'] = 2, ['0'] = 1, ['1'] = 1, ['2'] = 1,
+    ['3'] = 1, ['4'] = 1, ['5'] = 1, ['6'] = 1, ['7'] = 1, ['8'] = 1, ['9'] = 1,
+    ['A'] = 1, ['B'] = 1, ['C'] = 1, ['D'] = 1, ['E'] = 1, ['F'] = 1, ['G'] = 1,
+    ['H'] = 1, ['I'] = 1, ['J'] = 1, ['K'] = 1, ['L'] = 1, ['M'] = 1, ['N'] = 1,
+    ['O'] = 1, ['P'] = 1, ['Q'] = 1, ['R'] = 1, ['S'] = 1, ['T'] = 1, ['U'] = 1,
+    ['V'] = 1, ['W'] = 1, ['X'] = 1, ['Y'] = 1, ['Z'] = 1, ['a'] = 1, ['b'] = 1,
+    ['c'] = 1, ['d'] = 1, ['e'] = 1, ['f'] = 1, ['g'] = 1, ['h'] = 1, ['i'] = 1,
+    ['j'] = 1, ['k'] = 1, ['l'] = 1, ['m'] = 1, ['n'] = 1, ['o'] = 1, ['p'] = 1,
+    ['q'] = 1, ['r'] = 1, ['s'] = 1, ['t'] = 1, ['u'] = 1, ['v'] = 1, ['w'] = 1,
+    ['x'] = 1, ['y'] = 1, ['z'] = 1};
+
 bool wire_is_id(const char *s, size_t len)
 {
-    if (len == 0 || len > 63)
+    if (len == 0 || len > 63 || id_letter[(uint8_t)s[0]] != 1)
         return false;
-    for (size_t i = 0; i < len; i++) {
-        char c = s[i];
-        bool is_word = (c >= 'a' && c <= 'z') || (c >= 'A' && c <= 'Z') ||
-                       (c >= '0' && c <= '9');
-        bool is_joint = c == '_' || c == '.' || c == ':' || c == '-';
-        if (!is_word && !(is_joint && i > 0))
-            return false;
-    }
-    return true;
-}
-
-bool decode_is_utf8(const uint8_t *s, size_t len)
-{
-    for (size_t i = 0; i < len;) {
-        uint8_t c = s[i++];
-        if (c < 0x80)
-            continue;
-        int more = c >= 0xf0 ? 3 : c >= 0xe0 ? 2 : 1;
-        static const uint32_t least[] = {0, 0x80, 0x800, 0x10000};
-        if (c < 0xc2 || c > 0xf4 || len - i < (size_t)more)
-            return false;
-        uint32_t code = c & (0x3fu >> more);
-        for (int k = 0; k < more; k++, i++) {
-            if ((s[i] & 0xc0) != 0x80)
-                return false;
-            code = code << 6 | (s[i] & 0x3fu);
-        }
-        if (code < least[more] || code > 0x10ffff ||
-            (code >= 0xd800 && code <= 0xdfff))
-            return false;
-    }
-    return true;
+    bool is_good = true;
+    for (size_t i = 1; i < len; i++)
+        is_good &= id_letter[(uint8_t)s[i]] != 0;
+    return is_good;
 }
 
 void decode_begin(struct wire_decoder *d, struct element *e)
@@ -57,10 +42,11 @@ void decode_take(struct wire_decoder *d, struct element *e,
     }
     d->n_bad++;
     *is_wrong_version = *is_wrong_version || e->is_wrong_version;
-    if (!d->reason)
-        d->reason = e->reason ? e->reason
-                              : "more than 1024 elements in one datagram: send "
-                                "several";
+    if (d->reason)
+        return;
+    element_wrong(e, "more than 1024 elements in one datagram: send several");
+    d->reason = e->reason;
+    d->at = e->at;
 }
 
 enum datagram_outcome wire_decode(struct wire_decoder *d, const uint8_t *bytes,
@@ -69,8 +55,9 @@ enum datagram_outcome wire_decode(struct wire_decoder *d, const uint8_t *bytes,
     bool is_wrong_version = false;
     d->n = d->n_bad = d->at = d->scratch_used = 0;
     d->reason = NULL;
-    while (len > 0 && (bytes[len - 1] == 0 || bytes[len - 1] == '\n' ||
-                       bytes[len - 1] == '\r') &&
+    while (len > 0 &&
+           (bytes[len - 1] == 0 || bytes[len - 1] == '\n' ||
+            bytes[len - 1] == '\r') &&
            (bytes[0] < 0x80)) /* MessagePack may end in such a byte */
         len--;
     if (len == 0) {

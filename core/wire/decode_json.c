@@ -7,10 +7,17 @@
 #include "core/wire/decode_form.h"
 
 struct cursor {
-    const char *at, *end;
+    const char *at, *start, *end;
     struct wire_decoder *d; /* for its scratch                             */
-    const char *broken;
+    int depth;              /* objects and lists around an element's values */
+    const char *broken;     /* first reason, NULL while all is well        */
 };
+
+static const char no_key[] = "a key is no string: put it in double quotes";
+static const char no_colon[] = "no colon behind a key: send \"key\": value";
+static const char no_end[] =
+    "no comma and no closing bracket or brace: the datagram was cut, or a "
+    "comma is missing";
 
 static bool fail(struct cursor *c, const char *reason)
 {
@@ -35,7 +42,8 @@ static bool expect(struct cursor *c, char wanted, const char *reason)
     return true;
 }
 
-/* --- strings ------------------------------------------------------------------ */
+/* --- strings
+ * ------------------------------------------------------------------ */
 
 static int hex4(const char *s)
 {
@@ -53,26 +61,12 @@ static int hex4(const char *s)
     return v;
 }
 
-static int put_utf8(char *out, uint32_t code)
-{
-    if (code < 0x80) {
-        out[0] = (char)code;
-        return 1;
-    }
-    int n = code < 0x800 ? 2 : code < 0x10000 ? 3 : 4;
-    static const uint8_t lead[] = {0, 0, 0xc0, 0xe0, 0xf0};
-    for (int i = n - 1; i > 0; i--, code >>= 6)
-        out[i] = (char)(0x80 | (code & 0x3f));
-    out[0] = (char)(lead[n] | code);
-    return n;
-}
-
 /* The code of \uXXXX at c->at (behind the u), surrogate pairs joined. */
 static bool unicode(struct cursor *c, uint32_t *code)
 {
     int high = c->end - c->at >= 4 ? hex4(c->at) : -1;
     if (high < 0)
-        return fail(c, "a \\u needs four hexadecimal digits");
+        return fail(c, "a \\u without four hexadecimal digits: send \\uXXXX");
     c->at += 4;
     *code = (uint32_t)high;
     if (high < 0xd800 || high > 0xdfff)
@@ -81,10 +75,10 @@ static bool unicode(struct cursor *c, uint32_t *code)
                   ? hex4(c->at + 2)
                   : -1;
     if (high > 0xdbff || low < 0xdc00 || low > 0xdfff)
-        return fail(c, "half of a surrogate pair");
+        return fail(c, "half of a surrogate pair: send both halves, or UTF-8");
     c->at += 6;
-    *code = 0x10000 + ((uint32_t)(high - 0xd800) << 10) +
-            (uint32_t)(low - 0xdc00);
+    *code =
+        0x10000 + ((uint32_t)(high - 0xd800) << 10) + (uint32_t)(low - 0xdc00);
     return true;
 }
 
@@ -100,34 +94,29 @@ static bool escape(struct cursor *c, char *out, int *n)
         return true;
     }
     if (letter != 'u')
-        return fail(c, "an escape that JSON does not know");
+        return fail(c, "an escape that JSON does not know: send \\\\ for a "
+                       "backslash");
     if (!unicode(c, &code))
         return false;
-    *n = put_utf8(out, code);
+    *n = decode_put_utf8(out, code);
     return true;
 }
 
-/* Behind the quote; `text` has escapes resolved in the decoder's scratch. */
-static bool string(struct cursor *c, struct text *text)
+/* Behind the quote, with escapes: resolved in the decoder's scratch, or only
+ * checked when `text` is NULL. */
+static bool escaped(struct cursor *c, struct text *text)
 {
-    const char *start = c->at;
-    while (c->at < c->end && *c->at != '"' && *c->at != '\\' &&
-           (uint8_t)*c->at >= 0x20)
-        c->at++;
-    if (c->at < c->end && *c->at == '"') {
-        *text = (struct text){start, (int)(c->at++ - start)};
-        return decode_is_utf8((const uint8_t *)text->at, (size_t)text->len) ||
-               fail(c, "a string is not UTF-8");
-    }
     struct wire_decoder *d = c->d;
-    char *out = d->scratch + d->scratch_used;
-    int used = 0, room = WIRE_SCRATCH_SIZE - d->scratch_used;
-    for (c->at = start; c->at < c->end && *c->at != '"';) {
+    char unread[4], *out = text ? d->scratch + d->scratch_used : unread;
+    int used = 0, room = text ? WIRE_SCRATCH_SIZE - d->scratch_used : 4;
+    while (c->at < c->end && *c->at != '"') {
         int n = 1;
         if (used + 4 > room)
-            return fail(c, "too much escaped text in one datagram");
+            return fail(c, "too much escaped text in one datagram: send UTF-8 "
+                           "without escapes, or several datagrams");
         if ((uint8_t)*c->at < 0x20)
-            return fail(c, "a control character stands bare in a string");
+            return fail(c, "a control character stands bare in a string: "
+                           "escape it");
         if (*c->at == '\\') {
             c->at++;
             if (!escape(c, out + used, &n))
@@ -135,18 +124,39 @@ static bool string(struct cursor *c, struct text *text)
         } else {
             out[used] = *c->at++;
         }
-        used += n;
+        used += text ? n : 0;
     }
     if (c->at == c->end)
-        return fail(c, "a string does not end");
-    c->at++;
-    d->scratch_used += used;
-    *text = (struct text){out, used};
-    return decode_is_utf8((const uint8_t *)out, (size_t)used) ||
-           fail(c, "a string is not UTF-8");
+        return fail(c, "a string does not end: send its closing quote");
+    if (text) {
+        d->scratch_used += used;
+        *text = (struct text){out, used};
+    }
+    return true;
 }
 
-/* --- numbers ------------------------------------------------------------------ */
+/* Behind the quote; `text` may be NULL where nobody reads it. */
+static bool string(struct cursor *c, struct text *text)
+{
+    const char *start = c->at;
+    while (c->at < c->end && *c->at != '"' && *c->at != '\\' &&
+           (uint8_t)*c->at >= 0x20)
+        c->at++;
+    if (c->at < c->end && *c->at == '"') {
+        if (text)
+            *text = (struct text){start, (int)(c->at - start)};
+    } else {
+        c->at = start;
+        if (!escaped(c, text))
+            return false;
+    }
+    size_t raw = (size_t)(c->at++ - start);
+    return decode_is_utf8((const uint8_t *)start, raw) ||
+           fail(c, "a string is not UTF-8: send text as UTF-8");
+}
+
+/* --- numbers
+ * ------------------------------------------------------------------ */
 
 static const char *digits(const char *s, const char *end)
 {
@@ -207,25 +217,30 @@ static bool number(struct cursor *c, struct value *v)
     bool is_whole;
     const char *end = number_end(c->at, c->end, &is_whole);
     if (!end)
-        return fail(c, "a value that JSON does not know (a bare nan? send "
-                       "null)");
+        return fail(c, "a value that JSON does not know: send a number, a "
+                       "string in quotes, true, false or null (null for NaN)");
     if (!is_whole || !whole(c->at, end, v)) {
         v->kind = VALUE_DOUBLE;
         if (!wire_parse_number(c->at, (size_t)(end - c->at), &v->d))
-            return fail(c, "a number is too large for a double");
+            return fail(
+                c, "a number is too large for a double, or longer than 400 "
+                   "characters: send fewer digits");
     }
     c->at = end;
     return true;
 }
 
-/* --- values ------------------------------------------------------------------- */
+/* --- values
+ * ------------------------------------------------------------------- */
 
 static bool word(struct cursor *c, const char *text, enum value_kind kind,
                  struct value *v)
 {
     size_t n = strlen(text);
     if ((size_t)(c->end - c->at) < n || memcmp(c->at, text, n) != 0)
-        return fail(c, "a word that JSON does not know (NaN? send null)");
+        return fail(c,
+                    "a word that JSON does not know: send true, false or null "
+                    "(null for NaN)");
     c->at += n;
     v->kind = kind;
     return true;
@@ -245,7 +260,7 @@ static bool leaf(struct cursor *c, struct value *v)
     case 'n':
         return word(c, "null", VALUE_NULL, v);
     case 0:
-        return fail(c, "the JSON ends in the middle");
+        return fail(c, "the JSON ends in the middle: send the whole datagram");
     default:
         return number(c, v);
     }
@@ -253,29 +268,32 @@ static bool leaf(struct cursor *c, struct value *v)
 
 static bool skip(struct cursor *c, int depth);
 
-/* A list or an object that nobody reads: behind its opening bracket. */
+/* A list or an object that nobody reads: behind its opening bracket, `depth`
+ * others are open around it. */
 static bool skip_inside(struct cursor *c, char close, int depth)
 {
-    struct text key;
     if (depth >= WIRE_DEPTH_MAX)
-        return fail(c, "nested deeper than 8 levels");
+        return fail(c, "nested deeper than 8 levels: send flat objects");
     if (peek(c) == close)
         return expect(c, close, "");
     do {
-        if (close == '}' &&
-            !(expect(c, '"', "a key is no string") && string(c, &key) &&
-              expect(c, ':', "no colon behind a key")))
+        if (close == '}' && !(expect(c, '"', no_key) && string(c, NULL) &&
+                              expect(c, ':', no_colon)))
             return false;
         if (!skip(c, depth + 1))
             return false;
     } while (peek(c) == ',' && c->at++);
-    return expect(c, close, "no comma and no closing bracket");
+    return expect(c, close, no_end);
 }
 
 static bool skip(struct cursor *c, int depth)
 {
     struct value v;
     char first = peek(c);
+    if (first == '"') {
+        c->at++;
+        return string(c, NULL);
+    }
     if (first != '{' && first != '[')
         return leaf(c, &v);
     c->at++;
@@ -294,9 +312,9 @@ static bool list(struct cursor *c, struct value *v)
         struct value item;
         double x = 0;
         char first = peek(c);
-        if (first == '{' || first == '[') {
+        if (first == '{' || first == '[' || first == '"') {
             is_numbers = false;
-            if (!skip(c, 3))
+            if (!skip(c, c->depth + 1))
                 return false;
         } else if (!leaf(c, &item)) {
             return false;
@@ -309,7 +327,7 @@ static bool list(struct cursor *c, struct value *v)
     } while (peek(c) == ',' && c->at++);
     if (!is_numbers)
         v->kind = VALUE_OTHER;
-    return expect(c, ']', "no comma and no closing bracket");
+    return expect(c, ']', no_end);
 }
 
 static bool value(struct cursor *c, struct value *v)
@@ -321,10 +339,32 @@ static bool value(struct cursor *c, struct value *v)
     case '{':
         c->at++;
         v->kind = VALUE_OTHER;
-        return skip_inside(c, '}', 2);
+        return skip_inside(c, '}', c->depth);
     default:
         return leaf(c, v);
     }
+}
+
+/* A key and its value, of which only the known ones are kept. */
+static bool member(struct cursor *c, struct element *e)
+{
+    struct text key;
+    struct value v;
+    int used = c->d->scratch_used;
+    peek(c);
+    e->here = (int)(c->at - c->start);
+    if (!expect(c, '"', no_key) || !string(c, &key) ||
+        !expect(c, ':', no_colon))
+        return false;
+    enum element_key k = element_key(&key);
+    if (k == ELEMENT_OTHER) {
+        c->d->scratch_used = used;
+        return skip(c, c->depth);
+    }
+    if (!value(c, &v))
+        return false;
+    element_set(e, k, &v);
+    return true;
 }
 
 /* Behind '{'. */
@@ -333,54 +373,55 @@ static bool object(struct cursor *c, struct element *e)
     if (peek(c) == '}')
         return expect(c, '}', "");
     do {
-        struct text key;
-        struct value v;
-        if (!expect(c, '"', "a key is no string") || !string(c, &key) ||
-            !expect(c, ':', "no colon behind a key") || !value(c, &v))
+        if (!member(c, e))
             return false;
-        element_set(e, &key, &v);
     } while (peek(c) == ',' && c->at++);
-    return expect(c, '}', "no comma and no closing brace");
+    return expect(c, '}', no_end);
+}
+
+static bool element(struct cursor *c, bool *is_wrong_version)
+{
+    struct element e;
+    bool is_object = peek(c) == '{';
+    decode_begin(c->d, &e);
+    e.here = (int)(c->at - c->start);
+    if (is_object)
+        c->at++;
+    else
+        element_wrong(&e, "an element of the list is no object: send objects");
+    if (is_object ? !object(c, &e) : !skip(c, 1))
+        return false;
+    decode_take(c->d, &e, is_wrong_version);
+    return true;
 }
 
 static bool elements(struct cursor *c, bool *is_wrong_version)
 {
-    struct element e;
-    decode_begin(c->d, &e);
-    if (peek(c) == '{') {
-        c->at++;
-        if (!object(c, &e))
-            return false;
-        decode_take(c->d, &e, is_wrong_version);
-        return true;
-    }
-    if (!expect(c, '[', "neither JSON nor MessagePack: send an object or a "
-                        "list of objects"))
+    c->depth = 1;
+    if (peek(c) == '{')
+        return element(c, is_wrong_version);
+    if (!expect(c, '[',
+                "neither JSON nor MessagePack: send an object or a "
+                "list of objects"))
         return false;
+    c->depth = 2;
     if (peek(c) == ']')
         return expect(c, ']', "");
     do {
-        decode_begin(c->d, &e);
-        if (peek(c) == '{') {
-            c->at++;
-            if (!object(c, &e))
-                return false;
-        } else {
-            e.reason = "an element of the list is no object";
-            if (!skip(c, 1))
-                return false;
-        }
-        decode_take(c->d, &e, is_wrong_version);
+        if (!element(c, is_wrong_version))
+            return false;
     } while (peek(c) == ',' && c->at++);
-    return expect(c, ']', "no comma and no closing bracket");
+    return expect(c, ']', no_end);
 }
 
 const char *decode_json(struct wire_decoder *d, const uint8_t *bytes,
                         size_t len, bool *is_wrong_version)
 {
-    struct cursor c = {(const char *)bytes, (const char *)bytes + len, d, NULL};
+    const char *text = (const char *)bytes;
+    struct cursor c = {.at = text, .start = text, .end = text + len, .d = d};
     if (elements(&c, is_wrong_version) && (peek(&c), c.at < c.end))
         fail(&c, "more text behind the end: send one object or one list");
-    d->at = (int)(c.at - (const char *)bytes);
+    if (c.broken)
+        d->at = (int)(c.at - text);
     return c.broken;
 }

@@ -1,30 +1,93 @@
-/* MessagePack, pulled from the bytes in place: nothing is reserved for what a
- * length claims, so ten bytes cannot ask for gigabytes. */
+/* MessagePack through msgpack-c's parser template with callbacks of our own.
+ *
+ * The template keeps a stack of fixed size and every step of it eats bytes;
+ * the callbacks reserve nothing for what a length claims.  So ten bytes cannot
+ * ask for gigabytes, and time is linear in the datagram. */
 /* SPDX-License-Identifier: Apache-2.0 */
 #include <string.h>
 
-#include "core/math/real.h"
 #include "core/wire/decode_form.h"
 
-struct cursor {
-    const uint8_t *at, *end;
-    const char *broken; /* first reason, NULL while all is well            */
+enum role {
+    ROLE_SKIPPED,  /* a list or map that nobody reads                      */
+    ROLE_ELEMENTS, /* the outer list                                       */
+    ROLE_ELEMENT,  /* a map: one measurement                               */
+    ROLE_NUMBERS   /* a list that is the value of an element's key         */
+};
+
+/* What the template carries for a value, or for a list or map in work. */
+struct item {
+    uint8_t kind;   /* enum value_kind                                     */
+    uint8_t role;   /* enum role of a list or map                          */
+    bool is_nested; /* it is a list or map                                 */
+    uint32_t n;     /* bytes of a text, children of a list or map          */
+    union {
+        int64_t i;
+        uint64_t u;
+        double d;
+        const char *at;
+        uint64_t left; /* children still to come                           */
+    };
+};
+
+struct builder {
+    struct wire_decoder *d;
+    bool *is_wrong_version;
+    const char *bytes;
+    size_t len;
+    int depth;    /* lists and maps that are open                       */
+    bool is_list; /* the outermost is a list                            */
+    const char *broken;
+    struct element e;
+    struct value v; /* of the key in work; holds its list                 */
 };
 
 static const char truncated[] =
-    "the MessagePack ends in the middle: the datagram was cut, or a length is "
-    "wrong";
+    "the MessagePack ends in the middle: send the whole datagram, and lengths "
+    "that are true";
 
-static bool fail(struct cursor *c, const char *reason)
+static int fail(struct builder *b, const char *reason)
 {
-    if (!c->broken)
-        c->broken = reason;
-    return false;
+    if (!b->broken)
+        b->broken = reason;
+    return -1;
 }
 
-static bool need(struct cursor *c, size_t n)
+/* --- single values -------------------------------------------------------- */
+
+static int pull_int(int64_t i, struct item *o)
 {
-    return (size_t)(c->end - c->at) >= n || fail(c, truncated);
+    *o = (struct item){.kind = VALUE_INT, .i = i};
+    return 0;
+}
+
+static int pull_uint64(uint64_t u, struct item *o)
+{
+    *o = (struct item){.kind = u > INT64_MAX ? VALUE_UINT : VALUE_INT, .u = u};
+    return 0;
+}
+
+static int pull_real(enum value_kind kind, double x, struct item *o)
+{
+    *o = (struct item){.kind = (uint8_t)kind, .d = x};
+    return 0;
+}
+
+static int pull_word(enum value_kind kind, struct item *o)
+{
+    *o = (struct item){.kind = (uint8_t)kind};
+    return 0;
+}
+
+static int pull_str(struct builder *b, const char *at, uint32_t n,
+                    struct item *o)
+{
+    if (n == 0)
+        at = b->bytes; /* the template's pointer may be stale */
+    *o = (struct item){.kind = VALUE_TEXT, .n = n, .at = at};
+    return decode_is_utf8((const uint8_t *)at, n)
+               ? 0
+               : fail(b, "a string is not UTF-8: send text as UTF-8");
 }
 
 static uint64_t big_endian(const uint8_t *p, int n)
@@ -35,299 +98,236 @@ static uint64_t big_endian(const uint8_t *p, int n)
     return v;
 }
 
-/* Reads n bytes as an unsigned number; the caller asked need(). */
-static uint64_t take(struct cursor *c, int n)
-{
-    uint64_t v = big_endian(c->at, n);
-    c->at += n;
-    return v;
-}
-
-/* What a first byte opens: n children, or n bytes of payload. */
-enum opened_kind { OPENED_NONE, OPENED_LIST, OPENED_MAP, OPENED_TEXT,
-                   OPENED_BYTES, OPENED_EXT };
-
-struct opened {
-    enum opened_kind kind;
-    uint64_t n;
-};
-
-static bool holds_values(const struct opened *o)
-{
-    return o->kind == OPENED_LIST || o->kind == OPENED_MAP;
-}
-
-static uint64_t children(const struct opened *o)
-{
-    return o->kind == OPENED_MAP ? 2 * o->n : o->n;
-}
-
-static bool open_sized(struct cursor *c, uint8_t first, struct opened *o)
-{
-    int width = 0;
-    switch (first) {
-    case 0xc4: case 0xc5: case 0xc6:
-        o->kind = OPENED_BYTES;
-        width = 1 << (first - 0xc4);
-        break;
-    case 0xc7: case 0xc8: case 0xc9:
-        o->kind = OPENED_EXT;
-        width = 1 << (first - 0xc7);
-        break;
-    case 0xd4: case 0xd5: case 0xd6: case 0xd7: case 0xd8:
-        o->kind = OPENED_EXT;
-        o->n = (uint64_t)1 << (first - 0xd4);
-        return true;
-    case 0xd9: case 0xda: case 0xdb:
-        o->kind = OPENED_TEXT;
-        width = 1 << (first - 0xd9);
-        break;
-    case 0xdc: case 0xdd:
-        o->kind = OPENED_LIST;
-        width = 2 << (first - 0xdc);
-        break;
-    case 0xde: case 0xdf:
-        o->kind = OPENED_MAP;
-        width = 2 << (first - 0xde);
-        break;
-    default:
-        return fail(c, "a byte that MessagePack never uses");
-    }
-    if (!need(c, (size_t)width))
-        return false;
-    o->n = take(c, width);
-    return true;
-}
-
-static bool number(struct cursor *c, uint8_t first, struct value *v)
-{
-    static const uint8_t widths[] = {4, 8, 1, 2, 4, 8, 1, 2, 4, 8};
-    int width = widths[first - 0xca];
-    if (!need(c, (size_t)width))
-        return false;
-    uint64_t bits = take(c, width);
-    if (first == 0xca) {
-        uint32_t narrow = (uint32_t)bits;
-        float f;
-        memcpy(&f, &narrow, sizeof f);
-        v->kind = VALUE_FLOAT;
-        v->d = (double)f;
-    } else if (first == 0xcb) {
-        v->kind = VALUE_DOUBLE;
-        memcpy(&v->d, &bits, sizeof v->d);
-    } else if (first <= 0xcf) {
-        v->kind = bits > INT64_MAX ? VALUE_UINT : VALUE_INT;
-        v->u = bits;
-        v->i = (int64_t)bits;
-    } else {
-        int shift = 64 - 8 * width;
-        v->kind = VALUE_INT;
-        v->i = (int64_t)(bits << shift) >> shift;
-    }
-    return true;
-}
-
-/* Timestamp extension type -1 in its three sizes. */
-static void timestamp(const uint8_t *p, uint64_t n, struct value *v)
+/* Type byte and payload, n bytes in all.  Timestamps are type -1 in three
+ * sizes; every other extension is a value that no key takes. */
+static int pull_ext(struct builder *b, const uint8_t *p, uint32_t n,
+                    struct item *o)
 {
     uint64_t ns = 0;
     int64_t s = 0;
-    v->kind = VALUE_OTHER;
-    if (n == 4) {
-        s = (int64_t)big_endian(p, 4);
-    } else if (n == 8) {
-        uint64_t both = big_endian(p, 8);
+    *o = (struct item){.kind = VALUE_OTHER};
+    if (n == 0) /* the template adds 1 to a 32-bit length */
+        return fail(b, truncated);
+    if (p[0] != 0xff)
+        return 0;
+    if (n == 5) {
+        s = (int64_t)big_endian(p + 1, 4);
+    } else if (n == 9) {
+        uint64_t both = big_endian(p + 1, 8);
         ns = both >> 34;
         s = (int64_t)(both & 0x3ffffffff);
-    } else if (n == 12) {
-        ns = big_endian(p, 4);
-        s = (int64_t)big_endian(p + 4, 8);
+    } else if (n == 13) {
+        ns = big_endian(p + 1, 4);
+        s = (int64_t)big_endian(p + 5, 8);
     } else {
-        return;
+        return 0;
     }
     if (ns > 999999999 || s > 9000000000 || s < -9000000000)
-        return;
-    v->kind = VALUE_TIME;
-    v->i = s * 1000000000 + (int64_t)ns;
+        return 0;
+    *o = (struct item){.kind = VALUE_TIME, .i = s * 1000000000 + (int64_t)ns};
+    return 0;
 }
 
-static bool skip(struct cursor *c, int depth);
+/* --- lists and maps ------------------------------------------------------- */
 
-static bool skip_children(struct cursor *c, uint64_t n, int depth)
+static enum role role_of(struct builder *b, bool is_map)
 {
-    if (depth >= WIRE_DEPTH_MAX)
-        return fail(c, "nested deeper than 8 levels");
-    if (n > (uint64_t)(c->end - c->at))
-        return fail(c, truncated);
-    for (uint64_t i = 0; i < n; i++)
-        if (!skip(c, depth + 1))
-            return false;
-    return true;
+    int element = b->is_list ? 1 : 0; /* depth at which elements open */
+    if (is_map)
+        return b->depth == element ? ROLE_ELEMENT : ROLE_SKIPPED;
+    if (b->depth == 0)
+        return ROLE_ELEMENTS;
+    return b->depth == element + 1 ? ROLE_NUMBERS : ROLE_SKIPPED;
 }
 
-static bool payload(struct cursor *c, const struct opened *o, struct value *v)
+/* The template counts n children down by itself; `left` tells us the end. */
+static int pull_open(struct builder *b, uint32_t n, bool is_map, struct item *o)
 {
-    uint64_t n = o->n + (o->kind == OPENED_EXT ? 1 : 0);
-    if (n > (uint64_t)(c->end - c->at))
-        return fail(c, truncated);
-    v->kind = VALUE_OTHER;
-    if (o->kind == OPENED_TEXT) {
-        if (!decode_is_utf8(c->at, n))
-            return fail(c, "a string is not UTF-8");
-        v->kind = VALUE_TEXT;
-        v->text = (struct text){(const char *)c->at, (int)n};
-    } else if (o->kind == OPENED_EXT && c->at[0] == 0xff) {
-        timestamp(c->at + 1, o->n, v);
+    if (b->depth == 0)
+        b->is_list = !is_map;
+    enum role role = role_of(b, is_map);
+    if (n > b->len)
+        return fail(b, truncated);
+    *o = (struct item){.kind = VALUE_OTHER,
+                       .role = (uint8_t)role,
+                       .is_nested = true,
+                       .n = n,
+                       .left = n};
+    if (role == ROLE_ELEMENT)
+        decode_begin(b->d, &b->e);
+    if (role == ROLE_NUMBERS) {
+        o->kind = VALUE_LIST;
+        b->v.n = n < 255 ? (int)n : 255;
     }
-    c->at += n;
-    return true;
+    b->depth += n > 0;
+    return 0;
 }
 
-/* Everything that is no list and no map; *o says when it is one. */
-static bool leaf(struct cursor *c, struct value *v, struct opened *o)
+static void one_less(struct builder *b, struct item *o)
 {
-    if (!need(c, 1))
-        return false;
-    uint8_t first = *c->at++;
-    o->kind = OPENED_NONE;
-    o->n = 0;
-    if (first < 0x80 || first >= 0xe0) {
-        v->kind = VALUE_INT;
-        v->i = (int8_t)first;
-        return true;
-    }
-    if (first < 0xa0) {
-        o->kind = first < 0x90 ? OPENED_MAP : OPENED_LIST;
-        o->n = first & 15;
-        return true;
-    }
-    if (first < 0xc0) {
-        o->kind = OPENED_TEXT;
-        o->n = first & 31;
-        return payload(c, o, v);
-    }
-    if (first == 0xc0 || first == 0xc2 || first == 0xc3) {
-        v->kind = first == 0xc0 ? VALUE_NULL : VALUE_BOOL;
-        return true;
-    }
-    if (first >= 0xca && first <= 0xd3)
-        return number(c, first, v);
-    if (!open_sized(c, first, o))
-        return false;
-    return holds_values(o) || payload(c, o, v);
+    b->depth -= --o->left == 0;
 }
 
-static bool skip(struct cursor *c, int depth)
+/* The value of an element's key, in the form that both encodings share. */
+static void give(struct builder *b, const struct item *o)
 {
-    struct value v;
-    struct opened o;
-    if (!leaf(c, &v, &o))
-        return false;
-    return !holds_values(&o) || skip_children(c, children(&o), depth);
+    b->v.kind = (enum value_kind)o->kind;
+    b->v.i = o->i;
+    b->v.u = o->u;
+    b->v.d = o->d;
+    b->v.text = (struct text){o->at, (int)o->n};
 }
 
-/* A list of numbers and nulls; anything else in it makes it OTHER. */
-static bool list(struct cursor *c, uint64_t n, struct value *v)
+static int pull_map_item(struct builder *b, struct item *map,
+                         const struct item *key, const struct item *o)
 {
-    bool is_numbers = true;
-    if (n > (uint64_t)(c->end - c->at))
-        return fail(c, truncated);
-    v->n = n < 255 ? (int)n : 255;
-    for (uint64_t i = 0; i < n; i++) {
-        struct value item;
-        struct opened o;
-        double x = 0;
-        if (!leaf(c, &item, &o))
-            return false;
-        if (holds_values(&o)) {
-            is_numbers = false;
-            if (!skip_children(c, children(&o), 3))
-                return false;
-            continue;
+    one_less(b, map);
+    if (map->role != ROLE_ELEMENT)
+        return 0;
+    if (key->is_nested)
+        return fail(b, "a key of a map is a list or a map: send strings");
+    if (key->kind != VALUE_TEXT)
+        return 0;
+    struct text name = {key->at, (int)key->n};
+    give(b, o);
+    b->e.here = (int)(key->at - b->bytes);
+    element_set(&b->e, element_key(&name), &b->v);
+    return 0;
+}
+
+static int pull_list_item(struct builder *b, struct item *list,
+                          const struct item *o)
+{
+    uint64_t i = list->n - list->left;
+    one_less(b, list);
+    if (list->role == ROLE_ELEMENTS) {
+        if (o->role != ROLE_ELEMENT) {
+            decode_begin(b->d, &b->e);
+            element_wrong(&b->e, "an element of the list is no map: send maps");
         }
-        is_numbers = is_numbers && value_number(&item, &x);
+        decode_take(b->d, &b->e, b->is_wrong_version);
+    } else if (list->role == ROLE_NUMBERS) {
+        double x = 0;
+        give(b, o);
+        if (o->is_nested || !value_number(&b->v, &x))
+            list->kind = VALUE_OTHER;
         if (i < READS_MAX)
-            v->list[i] = x;
+            b->v.list[i] = x;
     }
-    v->kind = is_numbers ? VALUE_LIST : VALUE_OTHER;
-    return true;
+    return 0;
 }
 
-static bool value(struct cursor *c, struct value *v)
-{
-    struct opened o;
-    if (!leaf(c, v, &o))
-        return false;
-    if (o.kind == OPENED_LIST)
-        return list(c, o.n, v);
-    if (o.kind == OPENED_MAP) {
-        v->kind = VALUE_OTHER;
-        return skip_children(c, children(&o), 2);
+/* --- the template --------------------------------------------------------- */
+
+/* Its names for our callbacks; each hands on to one of the above. */
+#define TAKES_VALUE(name, type, call)                                          \
+    static inline int pulled_##name(struct builder *b, type x, struct item *o) \
+    {                                                                          \
+        (void)b;                                                               \
+        return call;                                                           \
     }
-    return true;
+#define TAKES_WORD(name, kind)                                                 \
+    static inline int pulled_##name(struct builder *b, struct item *o)         \
+    {                                                                          \
+        (void)b;                                                               \
+        return pull_word(kind, o);                                             \
+    }
+#define TAKES_BYTES(name, call)                                                \
+    static inline int pulled_##name(struct builder *b, const char *all,        \
+                                    const char *at, uint32_t n,                \
+                                    struct item *o)                            \
+    {                                                                          \
+        (void)all, (void)b, (void)at, (void)n;                                 \
+        return call;                                                           \
+    }
+TAKES_VALUE(uint8, uint8_t, pull_int(x, o))
+TAKES_VALUE(uint16, uint16_t, pull_int(x, o))
+TAKES_VALUE(uint32, uint32_t, pull_int(x, o))
+TAKES_VALUE(uint64, uint64_t, pull_uint64(x, o))
+TAKES_VALUE(int8, int8_t, pull_int(x, o))
+TAKES_VALUE(int16, int16_t, pull_int(x, o))
+TAKES_VALUE(int32, int32_t, pull_int(x, o))
+TAKES_VALUE(int64, int64_t, pull_int(x, o))
+TAKES_VALUE(float, float, pull_real(VALUE_FLOAT, (double)x, o))
+TAKES_VALUE(double, double, pull_real(VALUE_DOUBLE, x, o))
+TAKES_VALUE(array, uint32_t, pull_open(b, x, false, o))
+TAKES_VALUE(map, uint32_t, pull_open(b, x, true, o))
+TAKES_WORD(nil, VALUE_NULL)
+TAKES_WORD(true, VALUE_BOOL)
+TAKES_WORD(false, VALUE_BOOL)
+TAKES_BYTES(str, pull_str(b, at, n, o))
+TAKES_BYTES(bin, pull_word(VALUE_OTHER, o))
+TAKES_BYTES(ext, pull_ext(b, (const uint8_t *)at, n, o))
+
+static inline struct item pulled_root(struct builder *b)
+{
+    (void)b;
+    return (struct item){.kind = VALUE_NULL};
 }
 
-static bool map(struct cursor *c, uint64_t n, struct element *e)
+static inline int pulled_array_item(struct builder *b, struct item *list,
+                                    struct item o)
 {
-    for (uint64_t i = 0; i < n; i++) {
-        struct value key, v;
-        struct opened o;
-        if (!leaf(c, &key, &o))
-            return false;
-        if (holds_values(&o))
-            return fail(c, "a key of a map is a list or a map");
-        if (!value(c, &v))
-            return false;
-        if (key.kind == VALUE_TEXT)
-            element_set(e, &key.text, &v);
-    }
-    return true;
+    return pull_list_item(b, list, &o);
 }
 
-/* The elements of the outer list, or the one map. */
-static bool elements(struct cursor *c, struct wire_decoder *d,
-                     bool *is_wrong_version)
+static inline int pulled_map_item(struct builder *b, struct item *map,
+                                  struct item key, struct item o)
 {
-    struct opened outer, o;
-    struct value v;
-    struct element e;
-    if (!leaf(c, &v, &outer))
-        return false;
-    decode_begin(d, &e);
-    if (outer.kind == OPENED_MAP) {
-        if (!map(c, outer.n, &e))
-            return false;
-        decode_take(d, &e, is_wrong_version);
-        return true;
+    return pull_map_item(b, map, &key, &o);
+}
+
+#define MSGPACK_EMBED_STACK_SIZE       WIRE_DEPTH_MAX
+#define msgpack_unpack_struct(name)    struct parser##name
+#define msgpack_unpack_func(ret, name) static inline ret parser##name
+#define msgpack_unpack_callback(name)  pulled##name
+#define msgpack_unpack_object          struct item
+#define msgpack_unpack_user            struct builder
+#include <msgpack/unpack_define.h>
+#include <msgpack/unpack.h>
+#include <msgpack/unpack_template.h>
+
+/* Why the template stopped, unless a callback has said so. */
+static const char *reason_of(int result)
+{
+    switch (result) {
+    case MSGPACK_UNPACK_CONTINUE:
+        return truncated;
+    case MSGPACK_UNPACK_NOMEM_ERROR:
+        return "nested deeper than 8 levels: send flat maps";
+    default:
+        return "a byte that MessagePack never uses: check the encoder";
     }
-    if (outer.kind != OPENED_LIST)
-        return fail(c, "neither a map nor a list of maps");
-    if (outer.n > (uint64_t)(c->end - c->at))
-        return fail(c, truncated);
-    for (uint64_t i = 0; i < outer.n; i++) {
-        if (!leaf(c, &v, &o))
-            return false;
-        decode_begin(d, &e);
-        bool is_map = o.kind == OPENED_MAP;
-        e.reason = is_map ? NULL : "an element of the list is no map";
-        if (is_map ? !map(c, o.n, &e)
-                   : o.kind == OPENED_LIST && !skip_children(c, o.n, 1))
-            return false;
-        decode_take(d, &e, is_wrong_version);
-    }
-    return true;
 }
 
 const char *decode_msgpack(struct wire_decoder *d, const uint8_t *bytes,
                            size_t len, bool *is_wrong_version)
 {
-    struct cursor c = {bytes, bytes + len, NULL};
-    if (elements(&c, d, is_wrong_version))
-        while (c.at < c.end &&
-               (*c.at == 0 || *c.at == '\n' || *c.at == '\r'))
-            c.at++;
-    if (!c.broken && c.at < c.end)
-        fail(&c, "more bytes behind the end: send one map or one list");
-    d->at = (int)(c.at - bytes);
-    return c.broken;
+    struct parser_context c;
+    size_t at = 0;
+    c.user.d = d;
+    c.user.is_wrong_version = is_wrong_version;
+    c.user.bytes = (const char *)bytes;
+    c.user.len = len;
+    c.user.depth = 0;
+    c.user.is_list = false;
+    c.user.broken = NULL;
+    parser_init(&c);
+    int result = parser_execute(&c, (const char *)bytes, len, &at);
+    struct item outer = parser_data(&c);
+    if (result != 1) {
+        d->at = (int)at;
+        return c.user.broken ? c.user.broken : reason_of(result);
+    }
+    if (!outer.is_nested)
+        return "neither a map nor a list of maps: send one of them";
+    if (outer.role == ROLE_ELEMENT)
+        decode_take(d, &c.user.e, is_wrong_version);
+    while (at < len &&
+           (bytes[at] == 0 || bytes[at] == '\n' || bytes[at] == '\r'))
+        at++;
+    if (at == len)
+        return NULL;
+    d->at = (int)at;
+    return "more bytes behind the end: send one map or one list";
 }

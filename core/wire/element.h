@@ -12,6 +12,24 @@
 
 #include "core/model/message.h"
 
+enum element_key {
+    ELEMENT_SENSOR,
+    ELEMENT_TRACK,
+    ELEMENT_Z,
+    ELEMENT_T,
+    ELEMENT_NS,
+    ELEMENT_SEQ,
+    ELEMENT_U,
+    ELEMENT_COV,
+    ELEMENT_MARK,
+    ELEMENT_NAME,
+    ELEMENT_TEXT,
+    ELEMENT_V,
+    ELEMENT_SAMPLES,
+    ELEMENT_TICK,
+    ELEMENT_OTHER
+};
+
 enum value_kind {
     VALUE_NULL,
     VALUE_BOOL,
@@ -40,11 +58,18 @@ struct element {
     uint32_t seen;           /* bit per key                                */
     bool is_wrong_version;
     const char *reason;      /* NULL while all is well                     */
+    int here, at;            /* byte offset of the key in work, of reason  */
 };
 
 void element_begin(struct element *e, struct measurement *m);
-void element_set(struct element *e, const struct text *key,
-                 const struct value *v);
+
+/* Says that the element is wrong; only the first reason is kept. */
+void element_wrong(struct element *e, const char *reason);
+
+
+/* ELEMENT_OTHER is ignored with all that it holds. */
+enum element_key element_key(const struct text *key);
+void element_set(struct element *e, enum element_key k, const struct value *v);
 
 /* Checks the whole; false with e->reason when it is no measurement. */
 bool element_end(struct element *e);

@@ -133,8 +133,10 @@ INLINE void NAME(update)(const int at, struct NAME(state) * s, double z,
         s->x[i] += b[i] * (y * over); /* x = x + K y       */
 }
 
-INLINE void NAME(step)(struct NAME(state) * s, const double *z, double r,
-                       double q, double T)
+/* A call, as ours is one: nothing is carried over from step to step. */
+static __attribute__((noinline)) void NAME(step)(struct NAME(state) * s,
+                                                 const double *z, double r,
+                                                 double q, double T)
 {
     NAME(predict)(s, q, T);
     UNROLL

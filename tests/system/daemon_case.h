@@ -4,6 +4,7 @@
 #ifndef TESTS_SYSTEM_DAEMON_CASE_H
 #define TESTS_SYSTEM_DAEMON_CASE_H
 
+#include <errno.h>
 #include <poll.h>
 #include <signal.h>
 #include <stdio.h>
@@ -86,15 +87,16 @@ __attribute__((unused)) static char *read_until(int fd, const char *wanted,
     return text;
 }
 
-/* To the end of the stream. */
+/* To the end of the stream, which must be an orderly one. */
 __attribute__((unused)) static char *read_all(int fd)
 {
     static char text[1 << 22];
     size_t n = 0;
-    for (ssize_t got; n < sizeof text - 1 &&
-                      (got = read(fd, text + n, sizeof text - 1 - n)) > 0;)
+    ssize_t got;
+    while ((got = read(fd, text + n, sizeof text - 1 - n)) > 0)
         n += (size_t)got;
     text[n] = 0;
+    ck_assert_msg(got == 0, "after %zu bytes: %s", n, strerror(errno));
     return text;
 }
 

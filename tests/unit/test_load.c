@@ -296,7 +296,7 @@ START_TEST(a_wrong_change_is_named)
            "       = did you mean \"order\"?\n");
     change("sensors.laser.reads.0.x", "1",
            "--set sensors.laser.reads.0.x: error: there is no \"0.x\"\n"
-           "       = name keys by dots, places in a list from 0\n");
+           "       = join keys by dots, a block by its name or place from 0\n");
     change("rig", "5",
            "--set rig: error: \"rig\" must be a text in quotation marks\n"
            "       = meant here: name of the rig or of the test\n");

@@ -30,7 +30,7 @@ static void teardown(void)
 static double parse(const char *text, const char *to, enum quantity_role role)
 {
     struct err err = {ST_OK, ""};
-    double value = NAN;
+    double value = nan("");
     status st = quantity_parse(units, text, to, role, &value, &err);
     ck_assert_msg(st == ST_OK, "%s to %s: %s", text, to, err.text);
     return value;
@@ -71,7 +71,13 @@ static const struct {
     {"3 pulses", "count", 3},
     {"3 counts/s", "count/s", 3},
     {"2 \xc2\xb5m", "mm", 0.002},
-    {"1 gram", "kg", 0.001}};
+    {"1 gram", "kg", 0.001},
+    {"3 m s-2", "m/s2", 3},
+    {"3 m^2/s^-1", "m2.s", 3},
+    {"4 m**2", "m2", 4},
+    {"2 (1/s)^2", "1/s2", 2},
+    {"1 (%)^2/s", "1/s", 1e-4},
+    {"1 m/s\xc2\xb2", "m/s2", 1}};
 
 START_TEST(a_quantity_becomes_the_wanted_unit)
 {
@@ -125,6 +131,14 @@ static const struct {
     {"2 s since 1970-01-01", "s", "reference"},
     {"2 s@3", "s", "not known"},
     {"2 blub", "m", "not known"},
+    {"2 3 mm", "m", "holds a number"},
+    {"1.5.2 mm", "m", "holds a number"},
+    {"10 -3 m", "m", "holds a number"},
+    {"5 mm 2", "m", "holds a number"},
+    {"5 (3 mm)", "m", "holds a number"},
+    {"2 1 mm", "m", "holds a number"},
+    {"1 K/10 min", "K/s", "holds a number"},
+    {"5 m\xc2\xb7" "2", "m", "holds a number"},
     {"mm", "m", "not a number with a unit"},
     {"", "m", "not a number with a unit"},
     {"nan", "m", "not a number with a unit"},

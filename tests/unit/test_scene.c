@@ -132,6 +132,8 @@ START_TEST(truth_does_not_depend_on_when_it_was_asked)
         truth_at(&c, t_ns);
     ck_assert_mem_eq(truth_at(&c, second + 12345), late, sizeof late);
     ck_assert_mem_eq(truth_at(&c, second / 3), early, sizeof early);
+    ck_assert_int_eq(scene_reseed(c.scene, c.scene->seed), ST_OK);
+    ck_assert_mem_eq(truth_at(&c, second / 3), early, sizeof early);
     case_fini(&c);
 }
 END_TEST
@@ -258,6 +260,44 @@ START_TEST(towers_tell_range_and_bearing_in_their_units)
 }
 END_TEST
 
+START_TEST(noise_carries_a_bearing_over_half_a_turn_and_it_stays_in_range)
+{
+    struct play_case c;
+    struct scene_sensor p;
+    struct scene_reading reading;
+    int n_above = 0, n = 1000;
+    /* on the line from (1, 2) at 30 deg, where tower-a turns over */
+    case_init(&c, "{\"truth\": {\"raft-1\": {\"start\": {\"x\": \"11 m\", "
+                  "\"y\": \"7.7735026918962573 m\"}}}}");
+    scene_sensor_init(&p, c.scene, case_sensor(&c, "tower-a"), 0);
+    for (int k = 0; k < n; k++) {
+        ck_assert(scene_sensor_sample(&p, c.scene, &reading));
+        ck_assert_double_gt(fabs(reading.z[1]), 180 - 5 * 0.2);
+        ck_assert_double_le(fabs(reading.z[1]), 180);
+        n_above += reading.z[1] > 0;
+    }
+    ck_assert_int_le(abs(n_above - n / 2), 71); /* 500 +- 16 */
+    case_fini(&c);
+}
+END_TEST
+
+START_TEST(every_purpose_has_numbers_of_its_own)
+{
+    static const char *const names[][2] = {
+        {"noise", "laser"}, {"first", "laser"}, {"noise", "frame"}};
+    struct play_case c;
+    struct random random;
+    uint64_t bits[3];
+    case_init(&c, "{\"truth\": {\"cart\": []}}");
+    for (int i = 0; i < 3; i++) {
+        scene_random(c.scene, names[i][0], names[i][1], &random);
+        bits[i] = random_bits(&random);
+    }
+    ck_assert(bits[0] != bits[1] && bits[0] != bits[2] && bits[1] != bits[2]);
+    case_fini(&c);
+}
+END_TEST
+
 START_TEST(samples_come_at_the_rate_from_a_moment_in_the_first_period)
 {
     struct play_case c;
@@ -293,6 +333,9 @@ Suite *suite(void)
     tcase_add_test(t, a_bearing_crosses_half_a_turn_without_a_gap);
     tcase_add_test(t, a_sensor_tells_the_truth_in_its_unit_with_noise_of_its_u);
     tcase_add_test(t, towers_tell_range_and_bearing_in_their_units);
+    tcase_add_test(
+        t, noise_carries_a_bearing_over_half_a_turn_and_it_stays_in_range);
+    tcase_add_test(t, every_purpose_has_numbers_of_its_own);
     tcase_add_test(t,
                    samples_come_at_the_rate_from_a_moment_in_the_first_period);
     suite_add_tcase(s, t);

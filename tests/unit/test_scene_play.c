@@ -184,6 +184,30 @@ START_TEST(a_share_takes_one_to_two_periods_more_and_comes_out_of_order)
 }
 END_TEST
 
+START_TEST(what_arrives_at_one_instant_comes_as_it_was_sent)
+{
+    struct play_case c;
+    struct scene_network network;
+    struct scene_post post;
+    case_init(&c, CART(""));
+    scene_network_init(&network, c.scene);
+    for (int i = 0; i < 20; i++) {
+        struct scene_reading reading = {.sensor = i % 3, .t_ns = 5};
+        ck_assert_int_eq(scene_network_send(&network, c.scene, &reading),
+                         ST_OK);
+    }
+    for (int i = 0; i < 20; i++) {
+        ck_assert_int_eq(scene_network_due(&network), 5);
+        scene_network_take(&network, &post);
+        ck_assert_int_eq(post.reading.sensor, i % 3);
+        ck_assert_uint_eq(post.seq, (uint64_t)(i / 3 + 1));
+    }
+    ck_assert_int_eq(scene_network_due(&network), INT64_MAX);
+    scene_network_fini(&network);
+    case_fini(&c);
+}
+END_TEST
+
 START_TEST(a_declared_delay_makes_the_stamp_so_much_later)
 {
     struct play_case c;
@@ -330,6 +354,7 @@ Suite *suite(void)
     tcase_add_test(t, a_share_comes_twice_with_the_same_bytes);
     tcase_add_test(
         t, a_share_takes_one_to_two_periods_more_and_comes_out_of_order);
+    tcase_add_test(t, what_arrives_at_one_instant_comes_as_it_was_sent);
     tcase_add_test(t, a_declared_delay_makes_the_stamp_so_much_later);
     tcase_add_test(
         t, a_sensor_of_several_tracks_names_each_and_counts_them_together);
