@@ -139,9 +139,7 @@ static void count_settled(struct engine *e, struct track *t, struct step *s)
         return;
     w->summary.n_accepted++;
     w->summary.nis_accepted_sum += s->nis_used;
-    struct kf_seen seen = {.dof = s->dof, .nis = s->nis_used};
-    memcpy(seen.s, s->v + t->m_max, s->dof * sizeof(double));
-    t->loglik += kf_loglik(&seen);
+    kf_total_add(&t->total, s->dof, s->nis_used, s->v + t->m_max);
 }
 
 static void settle(struct engine *e, struct track *t, int64_t before_ns)
@@ -321,7 +319,7 @@ bool engine_track_summary(struct engine *e, int i, struct track_summary *out)
     out->sensor = e->summary;
     memcpy(out->id, t->id, sizeof out->id);
     out->kind = t->kind_index;
-    out->loglik = t->loglik;
+    out->loglik = kf_total_loglik(&t->total);
     out->measurements = t->n_used;
     return true;
 }

@@ -32,6 +32,7 @@ void roster_layout(struct roster *r, const struct rig *rig,
     int n = has_prefix && rig->max_tracks > n_fixed ? rig->max_tracks : n_fixed;
     struct track *track = arena_take(arena, (size_t)n * sizeof *track);
     int32_t *by_id = arena_take(arena, (size_t)n * sizeof *by_id);
+    uint64_t *key = arena_take(arena, (size_t)n * sizeof *key);
     for (int i = 0; i < rig->n_kinds; i++) {
         struct track_size size = track_size(rig, i);
         if (rig->kind[i].is_prefix)
@@ -48,8 +49,16 @@ void roster_layout(struct roster *r, const struct rig *rig,
     r->n_fixed = n_fixed;
     r->track = track;
     r->by_id = by_id;
+    r->key = key;
     for (int i = 0; i < n; i++)
         track[i].place = i;
+}
+
+static int compare(const char *id, size_t len, const char *there)
+{
+    size_t n = strlen(there);
+    int order = len <= 8 && n <= 8 ? 0 : memcmp(id, there, len < n ? len : n);
+    return order != 0 ? order : (len > n) - (len < n);
 }
 
 /* Where an id stands or belongs in the index. */
@@ -57,14 +66,13 @@ static int search(const struct roster *r, const char *id, size_t len,
                   bool *is_there)
 {
     int low = 0, high = r->n;
+    uint64_t key = rig_key(id, len);
     *is_there = false;
     while (low < high) {
         int middle = (low + high) / 2;
-        const char *there = r->track[r->by_id[middle]].id;
-        size_t n = strlen(there);
-        int order = memcmp(id, there, len < n ? len : n);
+        int order = key < r->key[middle] ? -1 : key > r->key[middle];
         if (order == 0)
-            order = (len > n) - (len < n);
+            order = compare(id, len, r->track[r->by_id[middle]].id);
         if (order == 0) {
             *is_there = true;
             return middle;
@@ -84,7 +92,10 @@ static struct track *open(struct roster *r, int place, int kind,
     int at = search(r, id->at, (size_t)id->len, &is_there);
     memmove(r->by_id + at + 1, r->by_id + at,
             (size_t)(r->n - at) * sizeof *r->by_id);
+    memmove(r->key + at + 1, r->key + at,
+            (size_t)(r->n - at) * sizeof *r->key);
     r->by_id[at] = place;
+    r->key[at] = rig_key(id->at, (size_t)id->len);
     r->n++;
     track_open(&r->track[place], r->rig, kind, id->at, (size_t)id->len, now_ns);
     return &r->track[place];
@@ -148,6 +159,8 @@ void roster_remove(struct roster *r, struct track *t)
     int at = search(r, t->id, strlen(t->id), &is_there);
     memmove(r->by_id + at, r->by_id + at + 1,
             (size_t)(r->n - at - 1) * sizeof *r->by_id);
+    memmove(r->key + at, r->key + at + 1,
+            (size_t)(r->n - at - 1) * sizeof *r->key);
     r->n--;
     t->is_used = false;
     if (t->sender >= 0)

@@ -70,6 +70,7 @@ void track_open(struct track *t, const struct rig *rig, int kind,
     t->is_used = true;
     t->is_confirmed = !t->kind->is_prefix;
     t->scratch_at = -1;
+    kf_total_begin(&t->total);
     t->order = was.order;
     t->free_slot = was.free_slot;
     t->free_state = was.free_state;
@@ -101,12 +102,6 @@ static int32_t *entry(const struct track *t, int i)
 {
     int at = t->head + i;
     return &t->order[at < t->capacity ? at : at - t->capacity];
-}
-
-struct step *track_step(const struct track *t, int i)
-{
-    return (struct step *)(void *)(t->slots +
-                                   (size_t)*entry(t, i) * t->step_bytes);
 }
 
 static struct track_state *checkpoint(const struct track *t,

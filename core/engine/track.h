@@ -106,7 +106,7 @@ struct track {
     int64_t greatest_t_ns;  /* of any measurement taken in                */
     bool has_greatest;
     uint64_t n_live, n_final; /* messages said                            */
-    double loglik;
+    struct kf_total total;
     uint64_t n_used;
     struct judged live, settled;
     struct watch *watch;    /* by local sensor number                     */
@@ -128,7 +128,15 @@ void track_layout(struct track *t, const struct track_size *size,
 void track_open(struct track *t, const struct rig *rig, int kind,
                 const char *id, size_t len, int64_t now_ns);
 
-struct step *track_step(const struct track *t, int i);
+/* The i-th step of the ring. */
+static inline struct step *track_step(const struct track *t, int i)
+{
+    int at = t->head + i;
+    at -= at < t->capacity ? 0 : t->capacity;
+    return (struct step *)(void *)(t->slots +
+                                   (size_t)t->order[at] * t->step_bytes);
+}
+
 static inline double *step_z(struct step *s)
 {
     return s->v;

@@ -14,7 +14,7 @@ static int above(const struct rig_kind *kind, const struct kf *kf,
 {
     int n = 0;
     const double *ud = kf->v + kf->n;
-    for (int i = 0; i < kind->n; i++) {
+    for (int i = 0; kind->has_limits && i < kind->n; i++) {
         double limit =
             is_lost_limit ? kind->state[i].lost_u : kind->state[i].good_u;
         if (limit > 0 && ud_variance(kf->n, ud, i) > limit * limit) {
@@ -28,8 +28,8 @@ static int above(const struct rig_kind *kind, const struct kf *kf,
 static enum verdict judge(const struct rig_kind *kind,
                           const struct verdict_input *in, struct judged *j)
 {
-    uint64_t undetermined = kf_undetermined(in->kf);
-    for (int i = 0; i < kind->n; i++)
+    uint64_t undetermined = in->kf->n_free > 0 ? kf_undetermined(in->kf) : 0;
+    for (int i = 0; undetermined && i < kind->n; i++)
         if (undetermined >> i & 1)
             because(j, REASON_UNDETERMINED, i);
     if (undetermined)

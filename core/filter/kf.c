@@ -474,6 +474,39 @@ static bool update_linear(struct kf_work *w, struct kf *f,
     return is_used;
 }
 
+void kf_total_begin(struct kf_total *t)
+{
+    *t = (struct kf_total){.product = 1};
+}
+
+/* Takes the power of two out of the product: exact. */
+static void normalise(struct kf_total *t)
+{
+    uint64_t bits;
+    memcpy(&bits, &t->product, sizeof bits);
+    t->doublings += (int64_t)(bits >> 52) - 1023;
+    bits = (bits & 0xfffffffffffff) | (uint64_t)1023 << 52;
+    memcpy(&t->product, &bits, sizeof bits);
+}
+
+void kf_total_add(struct kf_total *t, int dof, double nis, const double *s)
+{
+    for (int i = 0; i < dof; i++) {
+        t->product *= s[i];
+        if (!(t->product > 1e-150 && t->product < 1e150))
+            normalise(t);
+    }
+    t->nis += nis;
+    t->dof += dof;
+}
+
+double kf_total_loglik(const struct kf_total *t)
+{
+    double log_det =
+        real_log(t->product) + (double)t->doublings * REAL_LN_2;
+    return -(t->nis + (double)t->dof * REAL_LN_2PI + log_det) / 2;
+}
+
 bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
                const struct reads *reads, const double *z, const double *r,
                const double *gate, struct kf_seen *seen)

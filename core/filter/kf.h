@@ -84,6 +84,16 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
 /* log N(y; 0, S) of the judged components. */
 double kf_loglik(const struct kf_seen *seen);
 
+/* Many of them summed: |S| is multiplied up and its logarithm taken once. */
+struct kf_total {
+    double nis, product;   /* sum of NIS; |S| without its doublings          */
+    int64_t doublings, dof;
+};
+
+void kf_total_begin(struct kf_total *t);
+void kf_total_add(struct kf_total *t, int dof, double nis, const double *s);
+double kf_total_loglik(const struct kf_total *t);
+
 /* P x 100: rows and columns of states that are not constant, x 10. */
 void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f);
 

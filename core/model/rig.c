@@ -12,6 +12,15 @@ void rig_prepare(struct rig *rig)
         s->gate[0] = 0;
         for (int m = 1; m <= READS_MAX; m++)
             s->gate[m] = s->has_gate ? chi2_quantile(s->gate_p, m) : 0;
+        s->key = rig_key(s->name, strlen(s->name));
+    }
+    for (int i = 0; i < rig->n_kinds; i++) {
+        struct rig_kind *k = &rig->kind[i];
+        k->id_len = (int)strlen(k->id);
+        k->has_limits = false;
+        for (int j = 0; j < k->n; j++)
+            k->has_limits = k->has_limits || k->state[j].good_u > 0 ||
+                            k->state[j].lost_u > 0;
     }
 }
 
@@ -26,9 +35,12 @@ static int compare(const char *name, size_t len, const char *entry)
 int rig_find_sensor(const struct rig *rig, const char *name, size_t len)
 {
     int low = 0, high = rig->n_sensors - 1;
+    uint64_t key = rig_key(name, len);
     while (low <= high) {
         int middle = (low + high) / 2;
-        int order = compare(name, len, rig->sensor[middle].name);
+        const struct rig_sensor *s = &rig->sensor[middle];
+        int order = key != s->key ? (key < s->key ? -1 : 1)
+                                  : compare(name, len, s->name);
         if (order == 0)
             return middle;
         if (order < 0)
@@ -45,7 +57,9 @@ int rig_find_kind(const struct rig *rig, const char *id, size_t len)
     size_t best_len = 0;
     for (int i = 0; i < rig->n_kinds; i++) {
         const struct rig_kind *k = &rig->kind[i];
-        size_t n = strlen(k->id);
+        size_t n = (size_t)k->id_len;
+        if (n > len || k->id[0] != id[0])
+            continue;
         if (!k->is_prefix && n == len && memcmp(id, k->id, n) == 0)
             return i;
         if (k->is_prefix && n <= len && memcmp(id, k->id, n) == 0 &&

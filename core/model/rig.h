@@ -40,6 +40,7 @@ struct rig_state {
 /* A track of the file: one id, or every id that starts with a prefix. */
 struct rig_kind {
     char id[RIG_ID_SIZE];  /* without the '*' of a prefix                 */
+    int id_len;            /* by rig_prepare                              */
     bool is_prefix;
     int n_blocks, n;       /* n: states                                   */
     struct block block[RIG_BLOCKS_MAX];
@@ -47,6 +48,7 @@ struct rig_kind {
     bool has_start_at;     /* start.at given: the prior belongs to that time */
     int64_t start_at_ns;
     bool has_good;         /* any good.u given                            */
+    bool has_limits;       /* any good.u or lost.u, by rig_prepare        */
     int64_t lost_after_ns; /* coasting longer than this is lost           */
     int recover_refused;   /* refused in a row ...                        */
     int64_t recover_for_ns; /* ... for at least so long: widen            */
@@ -56,6 +58,7 @@ enum rig_stamp { RIG_STAMP_ANY, RIG_STAMP_SENSOR, RIG_STAMP_ARRIVAL };
 
 struct rig_sensor {
     char name[RIG_ID_SIZE];
+    uint64_t key;          /* of the name, by rig_prepare                 */
     char unit[READS_MAX][RIG_UNIT_SIZE];
     int kind;              /* its track: index into rig.kind              */
     struct reads reads;
@@ -93,8 +96,17 @@ struct rig {
     struct rig_network sender[RIG_SENDERS_MAX]; /* none: everyone may send */
 };
 
-/* Fills what follows from the rest: gate limits from gate_p.  Call once after
- * config filled the struct. */
+/* The first eight bytes of a text as a number that sorts as they do. */
+static inline uint64_t rig_key(const char *s, size_t len)
+{
+    uint64_t key = 0;
+    for (size_t i = 0; i < 8 && i < len; i++)
+        key |= (uint64_t)(uint8_t)s[i] << (56 - 8 * i);
+    return key;
+}
+
+/* Fills what follows from the rest: gate limits from gate_p, keys, lengths.
+ * Call once after config filled the struct. */
 void rig_prepare(struct rig *rig);
 
 /* Index of the sensor with this name, or -1; binary search. */
