@@ -54,6 +54,12 @@ static void wake(struct hub *h)
         uv_async_send(&h->wake);
 }
 
+bool hub_wants(struct hub *h, enum stream stream)
+{
+    return atomic_load_explicit(&h->interest, memory_order_acquire) >> stream &
+           1;
+}
+
 void hub_say(struct hub *h, const struct message *m)
 {
     unsigned interest =

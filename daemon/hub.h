@@ -24,6 +24,9 @@ status hub_start(struct hub **h, const struct settings *s, struct endpoint *at,
  * counted and told to the subscribers. */
 void hub_say(struct hub *h, const struct message *m);
 
+/* From ingest: does anybody want estimates of this stream? */
+bool hub_wants(struct hub *h, enum stream stream);
+
 /* From any thread: a host message for everybody (see wire_encode_host). */
 void hub_host(struct hub *h, const char *what, const char *text, uint64_t n);
 

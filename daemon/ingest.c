@@ -30,11 +30,30 @@ struct ingest {
     int64_t recorded_ns; /* line of the last record                */
     int64_t told_ns;     /* monotonic, of the last look at drops   */
     uint64_t n_dropped;
+    bool wants[2];       /* does anybody want this stream now?      */
     struct log_site refusals, drops, full;
 };
 
 /* --- what comes in
  * -------------------------------------------------------------- */
+
+static void see_who_listens(struct ingest *in)
+{
+    in->wants[STREAM_LIVE] = hub_wants(in->hub, STREAM_LIVE);
+    in->wants[STREAM_SETTLED] = hub_wants(in->hub, STREAM_SETTLED);
+}
+
+/* A refused datagram's first bytes, fit for a log. */
+static void log_refusal(struct ingest *in, const char *why,
+                        const uint8_t *bytes, size_t len)
+{
+    char head[61];
+    size_t n = len < sizeof head - 1 ? len : sizeof head - 1;
+    for (size_t i = 0; i < n; i++)
+        head[i] = bytes[i] >= 0x20 && bytes[i] < 0x7f ? (char)bytes[i] : '.';
+    head[n] = 0;
+    log_often(&in->refusals, "refused: %s; its first bytes: %s", why, head);
+}
 
 static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
                         const struct sender *from, const uint8_t *bytes,
@@ -46,14 +65,11 @@ static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
         !recorder_put(in->recorder, a_ns, from, &in->own, bytes, len))
         log_often(&in->full, "the capture lags behind: records left out");
     in->recorded_ns = in->advanced_ns = a_ns;
+    see_who_listens(in);
     run_feed(in->run, a_ns, from, bytes, len);
     const char *why = run_last_refusal(in->run);
     if (why)
-        log_often(&in->refusals, "refused: %s; its first bytes: %.*s", why,
-                  (int)(len < 60 ? len : 60),
-                  len > 0 && (bytes[0] == '{' || bytes[0] == '[')
-                      ? (const char *)bytes
-                      : "(MessagePack)");
+        log_refusal(in, why, bytes, len);
 }
 
 static void on_empty(void *ctx, struct line_reading now)
@@ -63,6 +79,7 @@ static void on_empty(void *ctx, struct line_reading now)
     if (reached_ns <= in->advanced_ns)
         return;
     in->advanced_ns = reached_ns;
+    see_who_listens(in);
     run_advance(in->run, reached_ns);
     if (in->recorder && reached_ns - in->recorded_ns >= SECOND_NS) {
         recorder_control(in->recorder, CONTROL_TIME, reached_ns, 0, "");
@@ -146,7 +163,7 @@ static status build_run(struct ingest *in, struct err *err)
                        bytes);
     /* Touched now: the first measurements shall not wait for pages. */
     memset(in->memory, 0, bytes);
-    in->run = run_init(in->memory, bytes, rig, (struct message_sink){say, in});
+    in->run = run_init(in->memory, bytes, rig, (struct message_sink){say, in, in->wants});
     return ST_OK;
 }
 
@@ -162,6 +179,7 @@ status ingest_start(struct ingest **out, uv_loop_t *loop,
     in->settings = s;
     in->hub = hub;
     in->recorder = recorder;
+    see_who_listens(in);
     line_start(&in->line, now);
     in->advanced_ns = in->recorded_ns = now.real_ns;
     status st = build_run(in, err);
@@ -202,6 +220,7 @@ void ingest_finish(struct ingest *in)
     look_at_drops(in);
     int64_t end_ns = run_arrival(in->run, line_now(&in->line, line_read()));
     record_stop(in, end_ns);
+    see_who_listens(in);
     run_stop(in->run, end_ns);
 }
 

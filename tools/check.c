@@ -59,7 +59,7 @@ double check_cost_s(const struct rig *rig)
     }
     size_t bytes = (run_bytes(rig) + 63) / 64 * 64;
     void *memory = aligned_alloc(64, bytes);
-    struct message_sink sink = {say_nothing, NULL};
+    struct message_sink sink = {say_nothing, NULL, NULL};
     struct run *r = memory == NULL ? NULL : run_init(memory, bytes, rig, sink);
     if (r == NULL) {
         free(memory);

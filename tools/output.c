@@ -88,7 +88,9 @@ static void say(void *ctx, const struct message *m)
 
 struct message_sink output_sink(struct output *o)
 {
-    return (struct message_sink){say, o};
+    o->wants[STREAM_LIVE] = o->streams & OUTPUT_LIVE;
+    o->wants[STREAM_SETTLED] = o->streams & OUTPUT_SETTLED;
+    return (struct message_sink){say, o, o->wants};
 }
 
 void output_description(struct output *o, const char *build)

@@ -18,6 +18,7 @@ struct output {
     const struct rig *rig;
     FILE *to;
     enum output_streams streams;
+    bool wants[2]; /* the same, by stream, for the run               */
     char *buf;
     size_t size, used;
     bool has_failed; /* the file takes no more; errno says why      */

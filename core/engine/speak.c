@@ -129,6 +129,11 @@ void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
 
 /* --- estimates ------------------------------------------------------------- */
 
+static bool is_wanted(const struct engine *e, enum stream stream)
+{
+    return !e->sink.wants || e->sink.wants[stream];
+}
+
 static struct estimate *estimate_of(struct engine *e, const struct track *t,
                                     const struct kf *kf, const struct step *s,
                                     const struct judged *j)
@@ -160,9 +165,12 @@ void speak_live(struct engine *e, struct track *t, int n_laid_again)
     if (t->n_live == 0 && t->kind->is_prefix)
         speak_event(e, EVENT_TRACK, t, -1, e->now_ns);
     speak_judge_live(e, t, false);
+    t->n_live++;
+    if (!is_wanted(e, STREAM_LIVE))
+        return;
     struct estimate *m = estimate_of(e, t, &tip->kf, s, &t->live);
     m->stream = STREAM_LIVE;
-    m->n = ++t->n_live;
+    m->n = t->n_live;
     m->arrived_ns = e->now_ns;
     m->rerun = (uint32_t)n_laid_again;
     e->sink.say(e->sink.ctx, &m->head);
@@ -180,8 +188,9 @@ static void speak_incidents(struct engine *e, struct track *t,
         speak_event(e, EVENT_REFUSALS, t, s->sensor, s->t_ns);
 }
 
-void speak_settled(struct engine *e, struct track *t, struct step *s,
-                   const struct track_state *st)
+/* The verdict at the step's own time, from stamps up to it alone. */
+static void judge_settled(struct engine *e, struct track *t,
+                          const struct step *s, const struct track_state *st)
 {
     int n;
     const int16_t *sensor = engine_sensors(e, t, &n);
@@ -190,16 +199,28 @@ void speak_settled(struct engine *e, struct track *t, struct step *s,
         int64_t after = e->rig->sensor[sensor[i]].silent_after_ns;
         e->silent[i] = t_ns == INT64_MIN || s->t_ns - t_ns >= after;
     }
+    struct verdict_input in = {&st->kf, sensor,     e->silent, n,
+                               0,       st->refused, s->sensor};
+    verdict_judge(t->kind, &in, &t->settled);
+}
+
+void speak_settled(struct engine *e, struct track *t, struct step *s,
+                   const struct track_state *st)
+{
+    bool is_told = is_wanted(e, STREAM_SETTLED);
     if (s->flags & (STEP_BIRTH | STEP_RESTARTED))
         t->settled.is_started = false;
     if (s->flags & STEP_BIRTH)
         t->n_final = 0;
-    struct verdict_input in = {&st->kf, sensor,     e->silent, n,
-                               0,       st->refused, s->sensor};
-    verdict_judge(t->kind, &in, &t->settled);
-    speak_incidents(e, t, s);
+    t->n_final++;
+    if (is_told || !t->settled.is_started)
+        judge_settled(e, t, s, st);
+    if (s->flags & ~(STEP_ACCEPTED | STEP_BIRTH) || s->refused > 0)
+        speak_incidents(e, t, s);
+    if (!is_told)
+        return;
     struct estimate *m = estimate_of(e, t, &st->kf, s, &t->settled);
     m->stream = STREAM_SETTLED;
-    m->n = ++t->n_final;
+    m->n = t->n_final;
     e->sink.say(e->sink.ctx, &m->head);
 }

@@ -232,10 +232,14 @@ struct sender {
     uint16_t port;
 };
 
-/* Where a run says things.  `m` lives only during the call. */
+/* Where a run says things.  `m` lives only during the call.  Estimates of a
+ * stream that nobody wants need not be made: `wants` (by stream) may change
+ * between calls of the run; NULL = both are wanted.  Nothing else depends on
+ * it, and numbers `n` run on. */
 struct message_sink {
     void (*say)(void *ctx, const struct message *m);
     void *ctx;
+    const bool *wants;
 };
 
 /* --- the last word of a run, per track ----------------------------------- */

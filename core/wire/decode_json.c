@@ -356,7 +356,7 @@ static bool member(struct cursor *c, struct element *e)
     if (!expect(c, '"', no_key) || !string(c, &key) ||
         !expect(c, ':', no_colon))
         return false;
-    enum element_key k = element_key(&key);
+    enum element_key k = element_key(key.at, (size_t)key.len);
     if (k == ELEMENT_OTHER) {
         c->d->scratch_used = used;
         return skip(c, c->depth);

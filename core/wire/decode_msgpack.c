@@ -172,7 +172,7 @@ static void one_less(struct builder *b, struct item *o)
 static void give(struct builder *b, const struct item *o)
 {
     b->v.kind = (enum value_kind)o->kind;
-    b->v.i = o->i;
+    b->v.i = o->i; /* the same bits in three readings */
     b->v.u = o->u;
     b->v.d = o->d;
     b->v.text = (struct text){o->at, (int)o->n};
@@ -188,10 +188,9 @@ static int pull_map_item(struct builder *b, struct item *map,
         return fail(b, "a key of a map is a list or a map: send strings");
     if (key->kind != VALUE_TEXT)
         return 0;
-    struct text name = {key->at, (int)key->n};
     give(b, o);
     b->e.here = (int)(key->at - b->bytes);
-    element_set(&b->e, element_key(&name), &b->v);
+    element_set(&b->e, element_key(key->at, key->n), &b->v);
     return 0;
 }
 

@@ -11,10 +11,15 @@ static const double seconds_max = 9.2e9;
 
 void element_begin(struct element *e, struct measurement *m)
 {
+    /* Not z and u, which are long; memset would cost more than these. */
+    const struct text none = {NULL, 0};
     e->m = m;
-    memset(m, 0, offsetof(struct measurement, z));
-    e->m->n_u = 0;
-    e->m->has_cov = false;
+    m->sensor = m->track = m->name = m->note = none;
+    m->mark = MARK_NONE;
+    m->has_t = m->has_seq = m->has_cov = false;
+    m->t_ns = 0;
+    m->seq = 0;
+    m->n_z = m->n_u = 0;
     e->seen = 0;
     e->is_wrong_version = false;
     e->reason = NULL;
@@ -93,20 +98,19 @@ static void set_z(struct element *e, const struct value *v)
         element_wrong(e, "z is an empty list: send null for no reading");
 }
 
-/* The nearest ns, exactly: the first 30 bits of the fraction times 10^9 in
- * integers; what is left is below one ns. */
+/* The nearest ns, exactly: a double is an integer times a power of two, and
+ * that integer times 10^9 has 83 bits.  |s| is below seconds_max. */
 static int64_t seconds_to_ns(double s)
 {
-    int64_t whole = (int64_t)s;
-    whole -= (double)whole > s;      /* floor          */
-    double part = s - (double)whole; /* exact          */
-    int64_t high = (int64_t)(part * 0x1p30);
-    double low = part - (double)high * 0x1p-30; /* exact          */
-    int64_t scaled = high * 1000000000;         /* 2^-30 ns       */
-    int64_t below = scaled & (((int64_t)1 << 30) - 1);
-    double rest = (double)below * 0x1p-30 + low * 1e9; /* below 2        */
-    int64_t up = rest >= 1.5 ? 2 : rest >= 0.5 ? 1 : 0;
-    return whole * 1000000000 + (scaled >> 30) + up;
+    uint64_t bits;
+    memcpy(&bits, &s, sizeof bits);
+    int power = (int)(bits >> 52 & 0x7ff) - 1075;
+    uint64_t whole = (bits & 0xfffffffffffff) | (uint64_t)1 << 52;
+    if (power < -84)
+        return 0; /* below half a nanosecond, denormals too */
+    unsigned __int128 ns = (unsigned __int128)whole * 1000000000;
+    ns = (ns + ((unsigned __int128)1 << (-power - 1))) >> -power;
+    return s < 0 ? -(int64_t)ns : (int64_t)ns;
 }
 
 static bool set_seconds(struct element *e, double s)

@@ -68,7 +68,7 @@ void element_wrong(struct element *e, const char *reason);
 
 
 /* ELEMENT_OTHER is ignored with all that it holds. */
-enum element_key element_key(const struct text *key);
+enum element_key element_key(const char *at, size_t len);
 void element_set(struct element *e, enum element_key k, const struct value *v);
 
 /* Checks the whole; false with e->reason when it is no measurement. */

@@ -67,6 +67,12 @@ static bool fast(const char *s, const char *end, double *value)
     return true;
 }
 
+static bool is_number_letter(char c)
+{
+    return (c >= '0' && c <= '9') || c == '.' || c == '-' || c == '+' ||
+           c == 'e' || c == 'E';
+}
+
 bool wire_parse_number(const char *s, size_t len, double *value)
 {
     char token[TOKEN_MAX + 1];
@@ -76,7 +82,7 @@ bool wire_parse_number(const char *s, size_t len, double *value)
         return true;
     /* strtod takes more than numbers: hexadecimal, inf, nan, blanks. */
     for (size_t i = 0; i < len; i++)
-        if (!strchr("0123456789+-.eE", s[i]) || s[i] == 0)
+        if (!is_number_letter(s[i]))
             return false;
     memcpy(token, s, len);
     token[len] = 0;

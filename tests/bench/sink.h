@@ -42,7 +42,8 @@ static inline int64_t sink_stamp(struct msghdr *h, int *segment)
     return stamp_ns;
 }
 
-static inline int sink_socket(int *port)
+/* is_merging: takes merged sends as one buffer, as the daemon does. */
+static inline int sink_socket(int *port, bool is_merging)
 {
     struct sockaddr_in at = {.sin_family = AF_INET,
                              .sin_addr.s_addr = htonl(INADDR_LOOPBACK)};
@@ -50,7 +51,8 @@ static inline int sink_socket(int *port)
     int fd = socket(AF_INET, SOCK_DGRAM, 0), size = SINK_BUFFER_SIZE, one = 1;
     setsockopt(fd, SOL_SOCKET, SO_RCVBUF, &size, sizeof size);
     setsockopt(fd, SOL_SOCKET, SO_TIMESTAMPNS, &one, sizeof one);
-    setsockopt(fd, IPPROTO_UDP, UDP_GRO, &one, sizeof one);
+    if (is_merging)
+        setsockopt(fd, IPPROTO_UDP, UDP_GRO, &one, sizeof one);
     BENCH_NEEDS(bind(fd, (struct sockaddr *)&at, sizeof at) == 0, "bind");
     BENCH_NEEDS(getsockname(fd, (struct sockaddr *)&at, &len) == 0, "port");
     *port = ntohs(at.sin_port);

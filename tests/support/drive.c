@@ -54,7 +54,7 @@ void drive_init(struct drive *d, const char *rig_text)
     const struct rig *rig = &d->settings->rig;
     size_t bytes = run_bytes(rig);
     d->memory = aligned_alloc(64, bytes);
-    d->run = run_init(d->memory, bytes, rig, (struct message_sink){say, d});
+    d->run = run_init(d->memory, bytes, rig, (struct message_sink){say, d, NULL});
     ck_assert_ptr_nonnull(d->run);
     d->line_size = wire_message_bound(rig);
     d->line = malloc(d->line_size);

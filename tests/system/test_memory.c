@@ -79,7 +79,8 @@ START_TEST(an_hour_takes_the_memory_that_check_prints)
     uint64_t n_estimates = 0, n = 0;
     char *memory = before_a_wall(bytes, &mapping, &len);
     struct run *run = run_init(memory, bytes, &s->rig,
-                               (struct message_sink){count, &n_estimates});
+                               (struct message_sink){count, &n_estimates,
+                                                     NULL});
     struct capture *c;
     struct pcap_record r;
     ck_assert_int_eq(capture_open(&c, pcap, NULL), ST_OK);
