@@ -447,12 +447,12 @@ UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
         seen->y[i] = y;                              /* y = z - H x       */
         if (!(S > 0))
             continue;
-        double gain = y / S;
+        double over = 1 / S, gain = y * over;
         seen->nis += y * gain;                       /* y' S^-1 y         */
         seen->s[seen->dof++] = S;
         if (gate && m == 1 && !(seen->nis <= gate[1]))
             return false;
-        ud_correct(n, ud, F, V, s->r[i], b);
+        ud_correct(n, ud, F, V, s->r[i], over, b);
         for (int k = 0; k < n; k++)
             x[k] += b[k] * gain;                     /* x = x + K y       */
     }

@@ -58,7 +58,8 @@ double ud_update(int n, double *ud, const double *h, double r, double *b)
 {
     double f[UD_MAX], v[UD_MAX];
     double S = ud_look(n, ud, h, r, f, v);
-    ud_correct(n, ud, f, v, r, b);
+    if (S > 0)
+        ud_correct(n, ud, f, v, r, 1 / S, b);
     return S;
 }
 

@@ -56,16 +56,17 @@ UNROLLED double ud_look(const int n, const double *ud, const double *h,
     return S;
 }
 
-/* The update itself from what ud_look found; b is the gain times S. */
+/* The update itself from what ud_look found, S > 0 and over = 1 / S; b is
+ * the gain times S. */
 UNROLLED void ud_correct(const int n, double *ud, const double *f,
-                         const double *v, double r, double *b)
+                         const double *v, double r, double over, double *b)
 {
     double alpha = r, inverse = r > 0 ? 1 / r : 0;
     double *col = ud;
     for (int j = 0; j < n; j++) {
         double was = alpha, lambda = -f[j] * inverse;
         alpha = was + f[j] * v[j];
-        inverse = alpha > 0 ? 1 / alpha : 0;
+        inverse = j == n - 1 ? over : alpha > 0 ? 1 / alpha : 0;
         if (alpha > 0)
             col[j] *= was * inverse;             /* D_j = D_j was / alpha */
         for (int i = 0; i < j; i++) {

@@ -65,8 +65,8 @@ START_TEST(a_kill_leaves_every_whole_record_readable)
 }
 END_TEST
 
-/* Sends of 60 datagrams each, which are merged: more than can be laid. */
-static void send_without_pause(void)
+/* Sends of 60 datagrams each, which arrive merged. */
+static void send_merged(int n_sends)
 {
     static const char one[] = "{\"sensor\":\"laser\",\"z\":1}";
     enum { EACH = sizeof one - 1, N = 60 };
@@ -75,15 +75,23 @@ static void send_without_pause(void)
     for (int i = 0; i < N; i++)
         memcpy(text + i * EACH, one, EACH);
     setsockopt(udp, IPPROTO_UDP, UDP_SEGMENT, &size, sizeof size);
-    for (int i = 0; i < 5000000; i++)
+    for (int i = 0; i < n_sends; i++)
         send(udp, text, EACH * N, 0);
 }
+
+START_TEST(what_the_kernel_merged_is_taken_apart)
+{
+    send_merged(3);
+    stop();
+    ck_assert_int_eq(read_capture(d.capture).n, 180);
+}
+END_TEST
 
 START_TEST(a_stop_comes_through_while_somebody_sends_without_pause)
 {
     pid_t sender = fork();
     if (sender == 0) {
-        send_without_pause();
+        send_merged(5000000); /* more than can be laid */
         _exit(0);
     }
     usleep(100000);
@@ -280,6 +288,7 @@ Suite *suite(void)
     tcase_add_checked_fixture(t, begin, end);
     tcase_add_test(t, a_clean_stop_leaves_a_capture_that_ends_with_stop);
     tcase_add_test(t, a_kill_leaves_every_whole_record_readable);
+    tcase_add_test(t, what_the_kernel_merged_is_taken_apart);
     tcase_add_test(t, a_stop_comes_through_while_somebody_sends_without_pause);
     tcase_add_test(
         t, the_log_ends_with_the_ledger_and_takes_no_bytes_off_the_wire);

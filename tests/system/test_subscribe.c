@@ -44,7 +44,7 @@ START_TEST(who_speaks_MessagePack_gets_maps_with_the_same_keys)
                                  "\xa3"
                                  "bye",
                                  4));
-    ck_assert_ptr_null(memmem(bytes, n, "{\"", 2));
+    ck_assert_ptr_null(memmem(bytes, n, "{\"type\"", 7));
     close(tcp);
 }
 END_TEST

@@ -98,11 +98,11 @@ END_TEST
 
 START_TEST(the_years_that_nanoseconds_hold_are_the_years_that_are_taken)
 {
-    /* days from 1970-01-01 by proleptic Gregorian count: -106650, 106751 */
+    /* days from 1970-01-01 by proleptic Gregorian count */
     ck_assert_int_eq(time_of("\"t\":\"1678-01-01T00:00:00Z\""),
                      -(int64_t)106650 * 86400 * 1000000000);
     ck_assert_int_eq(time_of("\"t\":\"2261-12-31T23:59:59.999999999+00:00\""),
-                     (int64_t)106650 * 86400 * 1000000000 - 1);
+                     (int64_t)106651 * 86400 * 1000000000 - 1);
     refused("{\"sensor\":\"a\",\"z\":1,\"t\":\"1677-12-31T23:59:59Z\"}",
             "RFC 3339");
     refused("{\"sensor\":\"a\",\"z\":1,\"t\":\"2262-01-01T00:00:00Z\"}",
@@ -193,7 +193,7 @@ START_TEST(the_place_of_a_reason_is_told)
                           "\"z\":true},{\"seq\":-1}]"),
                      DATAGRAM_DECODED);
     ck_assert_int_eq(d.n_bad, 2);
-    ck_assert_int_eq(d.at, 37); /* the key "z" of the second */
+    ck_assert_int_eq(d.at, 36); /* the key "z" of the second */
     ck_assert(strstr(d.reason, "z is neither") != NULL);
     refused("{\"sensor\":\"a\" \"z\":1}", "no comma");
     ck_assert_int_eq(d.at, 14);
