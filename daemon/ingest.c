@@ -30,7 +30,7 @@ struct ingest {
     int64_t recorded_ns; /* line of the last record                */
     int64_t told_ns;     /* monotonic, of the last look at drops   */
     uint64_t n_dropped;
-    bool wants[2];       /* does anybody want this stream now?      */
+    bool wants[2]; /* does anybody want this stream now?      */
     struct log_site refusals, drops, full;
 };
 
@@ -163,7 +163,8 @@ static status build_run(struct ingest *in, struct err *err)
                        bytes);
     /* Touched now: the first measurements shall not wait for pages. */
     memset(in->memory, 0, bytes);
-    in->run = run_init(in->memory, bytes, rig, (struct message_sink){say, in, in->wants});
+    in->run = run_init(in->memory, bytes, rig,
+                       (struct message_sink){say, in, in->wants});
     return ST_OK;
 }
 

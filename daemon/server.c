@@ -62,7 +62,7 @@ static status clock_start(struct server *s, struct err *err)
         uv_run(&s->loop, UV_RUN_NOWAIT);
     }
     uv_unref((uv_handle_t *)&s->term);
-    if (!is_clock_set())
+    if (!s->is_stopping && !is_clock_set())
         log_warn("the host's clock is not synchronised: going on without; "
                  "stamps of other machines may not fit");
     return ST_OK;

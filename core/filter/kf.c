@@ -46,19 +46,9 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
 /* --- predict ------------------------------------------------------------- */
 
 /* Kinds that consist of axes of one kinematic model only are the everyday case:
- * with n and the states per axis known, everything below unrolls. */
-static int levels_of(const struct rig_kind *kind)
-{
-    enum block_model model = kind->block[0].model;
-    for (int k = 1; k < kind->n_blocks; k++)
-        if (kind->block[k].model != model)
-            return 0;
-    return model == BLOCK_CONSTANT_VELOCITY       ? 2
-           : model == BLOCK_CONSTANT_ACCELERATION ? 3
-                                                  : 0;
-}
-
-/* The same transition as block.c's, laid out for constants: Phi's and Qu's
+ * with n and the states per axis known, everything below unrolls.
+ *
+ * The same transition as block.c's, laid out for constants: Phi's and Qu's
  * entries depend on how far right of the diagonal they stand. */
 UNROLLED void predict_axes(const int n, const int levels,
                            const struct rig_kind *kind, double *W, double *V,
@@ -108,11 +98,11 @@ INSTANCE(6, 3)
 INSTANCE(9, 3)
 
 /* False when there is no such instance. */
-static bool predict_kinematic(const struct rig_kind *kind,
+static inline bool predict_kinematic(const struct rig_kind *kind,
                               const struct kf *from, double dt_s,
                               struct kf *to)
 {
-    switch (kind->n * 10 + levels_of(kind)) {
+    switch (kind->n * 10 + kind->levels) {
     case 22:
         predict_2_2(kind, from, dt_s, to);
         return true;
@@ -418,6 +408,20 @@ double kf_loglik(const struct kf_seen *seen)
     return -sum / 2;                                 /* log N(y; 0, S)    */
 }
 
+/* h x of a sum of states; fills h. */
+UNROLLED double combine(const int n, const struct reads_row *row,
+                        const double *x, double *h)
+{
+    double sum = 0;
+    for (int k = 0; k < n; k++)
+        h[k] = 0;
+    for (int k = 0; k < row->n_terms; k++) {
+        h[row->term[k].state] += row->term[k].value;
+        sum += row->term[k].value * x[row->term[k].state];
+    }
+    return sum;
+}
+
 /* The everyday case: linear reads, nothing undetermined.  Components go in one
  * after the other; their joint NIS decides, then all or nothing stays. */
 UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
@@ -429,50 +433,46 @@ UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
     bool may_undo = gate && m > 1;
     if (may_undo)
         memcpy(was, x, (size_t)(n + UD_SIZE(n)) * sizeof *x);
-    seen->dof = seen->n_determined = 0;
-    seen->nis = 0;
+    double nis = 0;
+    int dof = 0;
     for (int i = 0; i < m; i++) {
         const struct reads_row *row = &s->reads->row[i];
-        double y = s->z[i];
-        seen->y[i] = y;
-        if (y != y)
+        double y = s->z[i], S;
+        if (y != y) {
+            seen->y[i] = y;
             continue;
-        for (int k = 0; k < n; k++)
-            h[k] = 0;
-        for (int k = 0; k < row->n_terms; k++) {
-            h[row->term[k].state] += row->term[k].value;
-            y -= row->term[k].value * x[row->term[k].state];
         }
-        double S = ud_look(n, ud, h, s->r[i], F, V);
+        if (row->n_terms == 1) {
+            int at = row->term[0].state;
+            double value = row->term[0].value;
+            y -= value * x[at];
+            S = ud_look_one(n, ud, at, value, s->r[i], F, V);
+        } else {
+            y -= combine(n, row, x, h);
+            S = ud_look(n, ud, h, s->r[i], F, V);
+        }
         seen->y[i] = y;                              /* y = z - H x       */
         if (!(S > 0))
             continue;
         double over = 1 / S, gain = y * over;
-        seen->nis += y * gain;                       /* y' S^-1 y         */
-        seen->s[seen->dof++] = S;
-        if (gate && m == 1 && !(seen->nis <= gate[1]))
-            return false;
+        nis += y * gain;                             /* y' S^-1 y         */
+        seen->s[dof++] = S;
+        if (gate && m == 1 && !(nis <= gate[1]))
+            break;
         ud_correct(n, ud, F, V, s->r[i], over, b);
         for (int k = 0; k < n; k++)
             x[k] += b[k] * gain;                     /* x = x + K y       */
     }
-    if (!may_undo || seen->dof == 0 || seen->nis <= gate[seen->dof])
+    seen->n_determined = 0;
+    seen->dof = dof;
+    seen->nis = nis;
+    if (!gate || dof == 0 || nis <= gate[dof])
         return true;
-    memcpy(x, was, (size_t)(n + UD_SIZE(n)) * sizeof *x);
+    if (may_undo)
+        memcpy(x, was, (size_t)(n + UD_SIZE(n)) * sizeof *x);
     return false;
 }
 
-static bool update_linear(struct kf_work *w, struct kf *f,
-                          const struct sight *s, const double *gate,
-                          struct kf_seen *seen)
-{
-    int n = f->n;
-    bool is_used = false;
-#define CALL(n) is_used = linear(n, f, s, gate, w->W, seen)
-    UD_FOR_N(n, CALL)
-#undef CALL
-    return is_used;
-}
 
 void kf_total_begin(struct kf_total *t)
 {
@@ -515,8 +515,13 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
     int n_free = f->n_free;
     bool is_linear = reads_is_linear(reads);
     struct sight sight = {reads, z, r};
-    if (is_linear && n_free == 0)
-        return update_linear(w, f, &sight, gate, seen);
+    bool is_used = false;
+    if (is_linear && n_free == 0) {
+#define CALL(n) is_used = linear(n, f, &sight, gate, w->W, seen)
+        UD_FOR_N(kind->n, CALL)
+#undef CALL
+        return is_used;
+    }
 
     memcpy(w->start, kf_x(f), n * sizeof(double));
     memcpy(w->x, kf_x(f), n * sizeof(double));

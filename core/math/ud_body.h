@@ -56,8 +56,28 @@ UNROLLED double ud_look(const int n, const double *ud, const double *h,
     return S;
 }
 
+/* The same for h that is `value` at `state` and zero elsewhere: a row of U. */
+UNROLLED double ud_look_one(const int n, const double *ud, int state,
+                            double value, double r, double *f, double *v)
+{
+    double S = r;
+    const double *col = ud;
+    for (int j = 0; j < n; j++) {
+        double u = 0;
+        if (j > state)
+            u = col[state] * value;
+        else if (j == state)
+            u = value;
+        f[j] = u;
+        v[j] = col[j] * u;
+        S += u * v[j];
+        col += j + 1;
+    }
+    return S;
+}
+
 /* The update itself from what ud_look found, S > 0 and over = 1 / S; b is
- * the gain times S. */
+ * the gain times S.  A column that h does not see stays exactly as it is. */
 UNROLLED void ud_correct(const int n, double *ud, const double *f,
                          const double *v, double r, double over, double *b)
 {
@@ -66,15 +86,16 @@ UNROLLED void ud_correct(const int n, double *ud, const double *f,
     for (int j = 0; j < n; j++) {
         double was = alpha, lambda = -f[j] * inverse;
         alpha = was + f[j] * v[j];
-        inverse = j == n - 1 ? over : alpha > 0 ? 1 / alpha : 0;
-        if (alpha > 0)
+        b[j] = v[j];
+        if (alpha > was) {
+            inverse = j == n - 1 ? over : 1 / alpha;
             col[j] *= was * inverse;             /* D_j = D_j was / alpha */
+        }
         for (int i = 0; i < j; i++) {
             double u = col[i];
             col[i] = u + b[i] * lambda;
             b[i] += u * v[j];
         }
-        b[j] = v[j];
         col += j + 1;
     }
 }

@@ -5,6 +5,27 @@
 
 #include "core/math/chi2.h"
 
+static int levels_of(const struct rig_kind *kind)
+{
+    enum block_model model = kind->block[0].model;
+    for (int k = 1; k < kind->n_blocks; k++)
+        if (kind->block[k].model != model)
+            return 0;
+    return model == BLOCK_CONSTANT_VELOCITY       ? 2
+           : model == BLOCK_CONSTANT_ACCELERATION ? 3
+                                                  : 0;
+}
+
+void rig_prepare_kind(struct rig_kind *kind)
+{
+    kind->id_len = (int)strlen(kind->id);
+    kind->levels = levels_of(kind);
+    kind->has_limits = false;
+    for (int i = 0; i < kind->n; i++)
+        kind->has_limits = kind->has_limits || kind->state[i].good_u > 0 ||
+                           kind->state[i].lost_u > 0;
+}
+
 void rig_prepare(struct rig *rig)
 {
     for (int i = 0; i < rig->n_sensors; i++) {
@@ -14,14 +35,8 @@ void rig_prepare(struct rig *rig)
             s->gate[m] = s->has_gate ? chi2_quantile(s->gate_p, m) : 0;
         s->key = rig_key(s->name, strlen(s->name));
     }
-    for (int i = 0; i < rig->n_kinds; i++) {
-        struct rig_kind *k = &rig->kind[i];
-        k->id_len = (int)strlen(k->id);
-        k->has_limits = false;
-        for (int j = 0; j < k->n; j++)
-            k->has_limits = k->has_limits || k->state[j].good_u > 0 ||
-                            k->state[j].lost_u > 0;
-    }
+    for (int i = 0; i < rig->n_kinds; i++)
+        rig_prepare_kind(&rig->kind[i]);
 }
 
 /* Order of `name` against the NUL-terminated `entry`. */

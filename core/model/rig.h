@@ -40,15 +40,18 @@ struct rig_state {
 /* A track of the file: one id, or every id that starts with a prefix. */
 struct rig_kind {
     char id[RIG_ID_SIZE];  /* without the '*' of a prefix                 */
-    int id_len;            /* by rig_prepare                              */
+    int id_len;            /* by rig_prepare_kind                         */
     bool is_prefix;
     int n_blocks, n;       /* n: states                                   */
+    int levels;            /* states per axis where all blocks are axes of
+                              one kinematic model, else 0; by
+                              rig_prepare_kind                            */
     struct block block[RIG_BLOCKS_MAX];
     struct rig_state state[RIG_STATES_MAX];
     bool has_start_at;     /* start.at given: the prior belongs to that time */
     int64_t start_at_ns;
     bool has_good;         /* any good.u given                            */
-    bool has_limits;       /* any good.u or lost.u, by rig_prepare        */
+    bool has_limits;       /* any good.u or lost.u, by rig_prepare_kind   */
     int64_t lost_after_ns; /* coasting longer than this is lost           */
     int recover_refused;   /* refused in a row ...                        */
     int64_t recover_for_ns; /* ... for at least so long: widen            */
@@ -108,6 +111,9 @@ static inline uint64_t rig_key(const char *s, size_t len)
 /* Fills what follows from the rest: gate limits from gate_p, keys, lengths.
  * Call once after config filled the struct. */
 void rig_prepare(struct rig *rig);
+
+/* The part of it that concerns one kind of track. */
+void rig_prepare_kind(struct rig_kind *kind);
 
 /* Index of the sensor with this name, or -1; binary search. */
 int rig_find_sensor(const struct rig *rig, const char *name, size_t len);

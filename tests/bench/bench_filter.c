@@ -125,6 +125,7 @@ static void make_ours(struct ours *o, const struct size *size)
         o->kind.state[i].has_prior = true;
         o->kind.state[i].prior_u = 10;
     }
+    rig_prepare_kind(&o->kind);
     for (int k = 0; k < TRACKS; k++) {
         o->f[k] = calloc(1, kf_bytes(&o->kind));
         BENCH_NEEDS(o->f[k] != NULL, "memory");

@@ -58,6 +58,7 @@ static inline void bed_start(struct bed *b, int64_t t_ns)
 {
     b->f = calloc(1, kf_bytes(&b->kind));
     ck_assert_ptr_nonnull(b->f);
+    rig_prepare_kind(&b->kind);
     kf_birth(&b->kind, t_ns, b->f);
 }
 

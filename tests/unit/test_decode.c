@@ -343,7 +343,7 @@ START_TEST(timestamps_of_all_three_sizes_are_taken)
         key(&p, "sensor");
         key(&p, "a");
         key(&p, "z");
-        msgpack_pack_double(&p, NAN);
+        msgpack_pack_double(&p, (double)NAN);
         key(&p, "t");
         msgpack_pack_ext(&p, rows[i].n, -1);
         msgpack_pack_ext_body(&p, rows[i].bytes, rows[i].n);
