@@ -28,6 +28,7 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->silent = arena_take(arena, n * sizeof *e->silent);
     e->seq = arena_take(arena, n * sizeof *e->seq);
     e->summary = arena_take(arena, n * sizeof *e->summary);
+    e->quota = arena_take(arena, n * sizeof *e->quota);
     e->budget = arena_take(arena, n * sizeof *e->budget);
     e->incoming = arena_take(arena, sizeof *e->incoming +
                                         2 * READS_MAX * sizeof(double));
@@ -79,6 +80,8 @@ struct engine *engine_init(void *memory, const struct rig *rig,
     for (int i = 0; i < e->roster.n_places; i++)
         e->due.id[i] = e->roster.track[i].id;
     number_sensors(e);
+    for (int i = 0; i < rig->n_sensors; i++)
+        e->quota[i] = rig_pending_quota(rig, &rig->sensor[i]);
     size_t bytes = sizeof *e->counts +
                    (size_t)rig->n_sensors * sizeof(struct ledger);
     e->counts->head = (struct message){.bytes = (uint32_t)bytes,

@@ -33,6 +33,7 @@ struct engine {
     bool *silent;       /* scratch of one judgement                        */
     struct seq_window *seq; /* by sensor                                   */
     struct sensor_summary *summary; /* scratch, by sensor                  */
+    int32_t *quota;     /* by sensor: pending measurements per track       */
     double *budget;     /* by sensor: re-run steps left in this second     */
 
     int32_t *touched;   /* places with something new in this datagram      */

@@ -175,7 +175,7 @@ static uint64_t digest(const struct measurement *m)
         for (int k = 0; k < 64; k += 8)
             h = (h ^ (bits >> k & 255)) * 1099511628211u;
     }
-    return m->n_u > 0 ? h | 1 : 0;
+    return h | 1;
 }
 
 /* Fills the scratch step; returns how many components were read. */
@@ -184,12 +184,14 @@ static int fill(struct engine *e, const struct measurement *m,
 {
     struct step *s = e->incoming;
     int n_read = 0;
-    memset(s, 0, sizeof *s + 2 * (size_t)m_max * sizeof(double));
+    memset(s, 0, sizeof *s);
+    for (int i = m->n_z; i < m_max; i++)
+        s->v[i] = 0;
     s->t_ns = d->t_ns;
     s->sensor = (int16_t)d->sensor;
     s->has_seq = m->has_seq;
     s->seq = m->has_seq ? m->seq : 0;
-    s->u_mark = digest(m);
+    s->u_mark = m->n_u > 0 ? digest(m) : 0;
     s->state = -1;
     for (int i = 0; i < m->n_z; i++) {
         s->v[i] = plain(m->z[i]);
@@ -247,7 +249,7 @@ static enum outcome place(struct engine *e, const struct measurement *m,
                           "limits.ids_per_sender");
     struct track *t = d->track;
     struct watch *w = &t->watch[e->local[d->sensor]];
-    if (w->pending >= rig_pending_quota(e->rig, sensor))
+    if (w->pending >= e->quota[d->sensor])
         return no_room(e, "more measurements pending than the sensor's rate "
                           "allows: raise `rate` or limits.pending");
     int again = t->n_laid - i;
@@ -278,6 +280,7 @@ static void heard(struct engine *e, struct track *t, int sensor)
     w->heard_ns = e->now_ns;
     if (w->is_silent) {
         w->is_silent = false;
+        t->n_silent--;
         speak_event(e, EVENT_BACK, t, sensor, e->now_ns);
     }
 }

@@ -92,6 +92,7 @@ static struct hearing hear(struct engine *e, struct track *t, bool is_tick)
         if (is_tick && !w->is_silent &&
             since > e->rig->sensor[sensor[i]].silent_after_ns) {
             w->is_silent = h.has_changed = true;
+            t->n_silent++;
             speak_event(e, EVENT_SILENT, t, sensor[i], e->now_ns);
         }
         e->silent[i] = w->is_silent;
@@ -102,12 +103,23 @@ static struct hearing hear(struct engine *e, struct track *t, bool is_tick)
     return h;
 }
 
+/* Good without reservation, and nothing that could change that. */
+static bool is_plainly_good(const struct track *t, const struct track_state *st)
+{
+    return t->n_silent == 0 && t->live.verdict == VERDICT_GOOD &&
+           t->live.n_why == 0 && !t->kind->has_limits && st->refused == 0 &&
+           st->kf.n_free == 0;
+}
+
 void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
 {
+    const struct track_state *newest = track_tip(t);
+    if (!is_tick && newest && is_plainly_good(t, newest))
+        return;
     int n;
     const int16_t *sensor = engine_sensors(e, t, &n);
     struct hearing h = hear(e, t, is_tick);
-    const struct track_state *tip = track_tip(t);
+    const struct track_state *tip = newest;
     bool is_coasting = h.n_silent == n;
     if (!tip || (is_tick && !h.has_changed && !is_coasting))
         return;

@@ -108,6 +108,7 @@ struct track {
     uint64_t n_live, n_final; /* messages said                            */
     struct kf_total total;
     uint64_t n_used;
+    int n_silent;           /* of its sensors                             */
     struct judged live, settled;
     struct watch *watch;    /* by local sensor number                     */
 };

@@ -1,115 +1,76 @@
-/* MessagePack through msgpack-c's parser template with callbacks of our own.
- *
- * The template keeps a stack of fixed size and every step of it eats bytes;
- * the callbacks reserve nothing for what a length claims.  So ten bytes cannot
- * ask for gigabytes, and time is linear in the datagram. */
+/* MessagePack, pulled from the bytes in place: nothing is reserved for what a
+ * length claims, so ten bytes cannot ask for gigabytes, and time is linear in
+ * the datagram. */
 /* SPDX-License-Identifier: Apache-2.0 */
 #include <string.h>
 
 #include "core/wire/decode_form.h"
 
-enum role {
-    ROLE_SKIPPED,  /* a list or map that nobody reads                      */
-    ROLE_ELEMENTS, /* the outer list                                       */
-    ROLE_ELEMENT,  /* a map: one measurement                               */
-    ROLE_NUMBERS   /* a list that is the value of an element's key         */
-};
-
-/* What the template carries for a value, or for a list or map in work. */
-struct item {
-    uint8_t kind;   /* enum value_kind                                     */
-    uint8_t role;   /* enum role of a list or map                          */
-    bool is_nested; /* it is a list or map                                 */
-    uint32_t n;     /* bytes of a text, children of a list or map          */
-    union {
-        int64_t i;
-        uint64_t u;
-        double d;
-        const char *at;
-        uint64_t left; /* children still to come                           */
-    };
-};
-
-struct builder {
-    struct wire_decoder *d;
-    bool *is_wrong_version;
-    const char *bytes;
-    size_t len;
-    int depth;    /* lists and maps that are open                       */
-    bool is_list; /* the outermost is a list                            */
-    const char *broken;
-    struct element e;
-    struct value v; /* of the key in work; holds its list                 */
+struct cursor {
+    const uint8_t *begin, *at, *end;
+    const char *broken; /* first reason, NULL while all is well            */
 };
 
 static const char truncated[] =
     "the MessagePack ends in the middle: send the whole datagram, and lengths "
     "that are true";
+static const char too_deep[] = "nested deeper than 8 levels: send flat maps";
 
-static int fail(struct builder *b, const char *reason)
+static bool fail(struct cursor *c, const char *reason)
 {
-    if (!b->broken)
-        b->broken = reason;
-    return -1;
+    if (!c->broken)
+        c->broken = reason;
+    return false;
 }
 
-/* --- single values -------------------------------------------------------- */
-
-static int pull_int(int64_t i, struct item *o)
+static inline size_t left(const struct cursor *c)
 {
-    *o = (struct item){.kind = VALUE_INT, .i = i};
-    return 0;
+    return (size_t)(c->end - c->at);
 }
 
-static int pull_uint64(uint64_t u, struct item *o)
+/* An unsigned number of 1, 2, 4 or 8 bytes that are there. */
+static inline uint64_t big_endian(const uint8_t *p, int n)
 {
-    *o = (struct item){.kind = u > INT64_MAX ? VALUE_UINT : VALUE_INT, .u = u};
-    return 0;
+    uint64_t v8;
+    uint32_t v4;
+    uint16_t v2;
+    switch (n) {
+    case 1:
+        return p[0];
+    case 2:
+        memcpy(&v2, p, 2);
+        return __builtin_bswap16(v2);
+    case 4:
+        memcpy(&v4, p, 4);
+        return __builtin_bswap32(v4);
+    default:
+        memcpy(&v8, p, 8);
+        return __builtin_bswap64(v8);
+    }
 }
 
-static int pull_real(enum value_kind kind, double x, struct item *o)
-{
-    *o = (struct item){.kind = (uint8_t)kind, .d = x};
-    return 0;
-}
+/* --- what a first byte opens ------------------------------------------------ */
 
-static int pull_word(enum value_kind kind, struct item *o)
-{
-    *o = (struct item){.kind = (uint8_t)kind};
-    return 0;
-}
+enum opened_kind {
+    OPENED_VALUE, /* complete in itself                                    */
+    OPENED_LIST,
+    OPENED_MAP
+};
 
-static int pull_str(struct builder *b, const char *at, uint32_t n,
-                    struct item *o)
-{
-    if (n == 0)
-        at = b->bytes; /* the template's pointer may be stale */
-    *o = (struct item){.kind = VALUE_TEXT, .n = n, .at = at};
-    return decode_is_utf8((const uint8_t *)at, n)
-               ? 0
-               : fail(b, "a string is not UTF-8: send text as UTF-8");
-}
-
-static uint64_t big_endian(const uint8_t *p, int n)
-{
-    uint64_t v = 0;
-    for (int i = 0; i < n; i++)
-        v = v << 8 | p[i];
-    return v;
-}
+struct opened {
+    enum opened_kind kind;
+    uint64_t n; /* children of a list, pairs of a map                       */
+};
 
 /* Type byte and payload, n bytes in all.  Timestamps are type -1 in three
  * sizes; every other extension is a value that no key takes. */
-static int pull_ext(struct builder *b, const uint8_t *p, uint32_t n,
-                    struct item *o)
+static void extension(const uint8_t *p, uint64_t n, struct value *v)
 {
     uint64_t ns = 0;
     int64_t s = 0;
-    *o = (struct item){.kind = VALUE_OTHER};
-    if (n == 0) /* the template adds 1 to a 32-bit length */
-        return fail(b, truncated);
+    v->kind = VALUE_OTHER;
     if (p[0] != 0xff)
-        return 0;
+        return;
     if (n == 5) {
         s = (int64_t)big_endian(p + 1, 4);
     } else if (n == 9) {
@@ -120,213 +81,251 @@ static int pull_ext(struct builder *b, const uint8_t *p, uint32_t n,
         ns = big_endian(p + 1, 4);
         s = (int64_t)big_endian(p + 5, 8);
     } else {
-        return 0;
+        return;
     }
     if (ns > 999999999 || s > 9000000000 || s < -9000000000)
-        return 0;
-    *o = (struct item){.kind = VALUE_TIME, .i = s * 1000000000 + (int64_t)ns};
-    return 0;
+        return;
+    v->kind = VALUE_TIME;
+    v->i = s * 1000000000 + (int64_t)ns;
 }
 
-/* --- lists and maps ------------------------------------------------------- */
+enum payload { PAYLOAD_TEXT, PAYLOAD_BYTES, PAYLOAD_EXTENSION };
 
-static enum role role_of(struct builder *b, bool is_map)
+static bool take_payload(struct cursor *c, enum payload what, uint64_t n,
+                         struct value *v)
 {
-    int element = b->is_list ? 1 : 0; /* depth at which elements open */
-    if (is_map)
-        return b->depth == element ? ROLE_ELEMENT : ROLE_SKIPPED;
-    if (b->depth == 0)
-        return ROLE_ELEMENTS;
-    return b->depth == element + 1 ? ROLE_NUMBERS : ROLE_SKIPPED;
-}
-
-/* The template counts n children down by itself; `left` tells us the end. */
-static int pull_open(struct builder *b, uint32_t n, bool is_map, struct item *o)
-{
-    if (b->depth == 0)
-        b->is_list = !is_map;
-    enum role role = role_of(b, is_map);
-    if (n > b->len)
-        return fail(b, truncated);
-    *o = (struct item){.kind = VALUE_OTHER,
-                       .role = (uint8_t)role,
-                       .is_nested = true,
-                       .n = n,
-                       .left = n};
-    if (role == ROLE_ELEMENT)
-        decode_begin(b->d, &b->e);
-    if (role == ROLE_NUMBERS) {
-        o->kind = VALUE_LIST;
-        b->v.n = n < 255 ? (int)n : 255;
+    n += what == PAYLOAD_EXTENSION; /* its type byte */
+    if (n > left(c))
+        return fail(c, truncated);
+    if (what == PAYLOAD_TEXT) {
+        if (!decode_is_utf8(c->at, n))
+            return fail(c, "a string is not UTF-8: send text as UTF-8");
+        v->kind = VALUE_TEXT;
+        v->text = (struct text){(const char *)c->at, (int)n};
+    } else if (what == PAYLOAD_EXTENSION) {
+        extension(c->at, n, v);
+    } else {
+        v->kind = VALUE_OTHER;
     }
-    b->depth += n > 0;
-    return 0;
+    c->at += n;
+    return true;
 }
 
-static void one_less(struct builder *b, struct item *o)
+/* A length of `width` bytes. */
+static bool take_length(struct cursor *c, int width, uint64_t *n)
 {
-    b->depth -= --o->left == 0;
+    if (left(c) < (size_t)width)
+        return fail(c, truncated);
+    *n = big_endian(c->at, width);
+    c->at += width;
+    return true;
 }
 
-/* The value of an element's key, in the form that both encodings share. */
-static void give(struct builder *b, const struct item *o)
+static bool take_number(struct cursor *c, uint8_t first, struct value *v)
 {
-    b->v.kind = (enum value_kind)o->kind;
-    b->v.i = o->i; /* the same bits in three readings */
-    b->v.u = o->u;
-    b->v.d = o->d;
-    b->v.text = (struct text){o->at, (int)o->n};
+    /* float 4 8, unsigned 1 2 4 8, signed 1 2 4 8 */
+    static const uint8_t widths[] = {4, 8, 1, 2, 4, 8, 1, 2, 4, 8};
+    int width = widths[first - 0xca];
+    if (left(c) < (size_t)width)
+        return fail(c, truncated);
+    uint64_t bits = big_endian(c->at, width);
+    c->at += width;
+    if (first == 0xcb) {
+        v->kind = VALUE_DOUBLE;
+        memcpy(&v->d, &bits, sizeof v->d);
+    } else if (first == 0xca) {
+        uint32_t narrow = (uint32_t)bits;
+        float f;
+        memcpy(&f, &narrow, sizeof f);
+        v->kind = VALUE_FLOAT;
+        v->d = (double)f;
+    } else if (first <= 0xcf) {
+        v->kind = bits > INT64_MAX ? VALUE_UINT : VALUE_INT;
+        v->u = bits;
+        v->i = (int64_t)bits;
+    } else {
+        int shift = 64 - 8 * width;
+        v->kind = VALUE_INT;
+        v->i = (int64_t)(bits << shift) >> shift;
+    }
+    return true;
 }
 
-static int pull_map_item(struct builder *b, struct item *map,
-                         const struct item *key, const struct item *o)
+/* The forms whose length stands in bytes of its own, and the unused byte. */
+static bool take_sized(struct cursor *c, uint8_t first, struct value *v,
+                       struct opened *o)
 {
-    one_less(b, map);
-    if (map->role != ROLE_ELEMENT)
-        return 0;
-    if (key->is_nested)
-        return fail(b, "a key of a map is a list or a map: send strings");
-    if (key->kind != VALUE_TEXT)
-        return 0;
-    give(b, o);
-    b->e.here = (int)(key->at - b->bytes);
-    element_set(&b->e, element_key(key->at, key->n), &b->v);
-    return 0;
+    uint64_t n;
+    if (first >= 0xc4 && first <= 0xc6)
+        return take_length(c, 1 << (first - 0xc4), &n) &&
+               take_payload(c, PAYLOAD_BYTES, n, v);
+    if (first >= 0xc7 && first <= 0xc9)
+        return take_length(c, 1 << (first - 0xc7), &n) &&
+               take_payload(c, PAYLOAD_EXTENSION, n, v);
+    if (first >= 0xd4 && first <= 0xd8)
+        return take_payload(c, PAYLOAD_EXTENSION, 1u << (first - 0xd4), v);
+    if (first >= 0xd9 && first <= 0xdb)
+        return take_length(c, 1 << (first - 0xd9), &n) &&
+               take_payload(c, PAYLOAD_TEXT, n, v);
+    if (first >= 0xdc) {
+        o->kind = first <= 0xdd ? OPENED_LIST : OPENED_MAP;
+        return take_length(c, first & 1 ? 4 : 2, &o->n);
+    }
+    return fail(c, "a byte that MessagePack never uses: check the encoder");
 }
 
-static int pull_list_item(struct builder *b, struct item *list,
-                          const struct item *o)
+/* One value, or the beginning of a list or map. */
+static inline bool take(struct cursor *c, struct value *v, struct opened *o)
 {
-    uint64_t i = list->n - list->left;
-    one_less(b, list);
-    if (list->role == ROLE_ELEMENTS) {
-        if (o->role != ROLE_ELEMENT) {
-            decode_begin(b->d, &b->e);
-            element_wrong(&b->e, "an element of the list is no map: send maps");
-        }
-        decode_take(b->d, &b->e, b->is_wrong_version);
-    } else if (list->role == ROLE_NUMBERS) {
+    if (c->at == c->end)
+        return fail(c, truncated);
+    uint8_t first = *c->at++;
+    o->kind = OPENED_VALUE;
+    if (first < 0x80 || first >= 0xe0) {
+        v->kind = VALUE_INT;
+        v->i = (int8_t)first;
+        return true;
+    }
+    if (first < 0xa0) {
+        o->kind = first < 0x90 ? OPENED_MAP : OPENED_LIST;
+        o->n = first & 15;
+        return true;
+    }
+    if (first < 0xc0)
+        return take_payload(c, PAYLOAD_TEXT, first & 31, v);
+    if (first >= 0xca && first <= 0xd3)
+        return take_number(c, first, v);
+    if (first == 0xc0 || first == 0xc2 || first == 0xc3) {
+        v->kind = first == 0xc0 ? VALUE_NULL : VALUE_BOOL;
+        return true;
+    }
+    return take_sized(c, first, v, o);
+}
+
+/* --- what nobody reads ------------------------------------------------------ */
+
+/* The children of a list or map that stands at this depth. */
+static bool skip_inside(struct cursor *c, const struct opened *o, int depth)
+{
+    uint64_t n = o->kind == OPENED_MAP ? 2 * o->n : o->n;
+    if (n > left(c))
+        return fail(c, truncated);
+    if (depth >= WIRE_DEPTH_MAX)
+        return fail(c, too_deep);
+    for (uint64_t i = 0; i < n; i++) {
+        struct value v;
+        struct opened inner;
+        if (!take(c, &v, &inner) ||
+            (inner.kind != OPENED_VALUE && !skip_inside(c, &inner, depth + 1)))
+            return false;
+    }
+    return true;
+}
+
+/* --- elements --------------------------------------------------------------- */
+
+/* A list of numbers and nulls; anything else in it makes it OTHER. */
+static bool take_list(struct cursor *c, uint64_t n, int depth, struct value *v)
+{
+    bool is_numbers = true;
+    if (n > left(c))
+        return fail(c, truncated);
+    v->n = n < 255 ? (int)n : 255;
+    for (uint64_t i = 0; i < n; i++) {
+        struct value item;
+        struct opened o;
         double x = 0;
-        give(b, o);
-        if (o->is_nested || !value_number(&b->v, &x))
-            list->kind = VALUE_OTHER;
+        if (!take(c, &item, &o))
+            return false;
+        if (o.kind != OPENED_VALUE) {
+            is_numbers = false;
+            if (!skip_inside(c, &o, depth + 1))
+                return false;
+        } else {
+            is_numbers = value_number(&item, &x) && is_numbers;
+        }
         if (i < READS_MAX)
-            b->v.list[i] = x;
+            v->list[i] = x;
     }
-    return 0;
+    v->kind = is_numbers ? VALUE_LIST : VALUE_OTHER;
+    return true;
 }
 
-/* --- the template --------------------------------------------------------- */
-
-/* Its names for our callbacks; each hands on to one of the above. */
-#define TAKES_VALUE(name, type, call)                                          \
-    static inline int pulled_##name(struct builder *b, type x, struct item *o) \
-    {                                                                          \
-        (void)b;                                                               \
-        return call;                                                           \
-    }
-#define TAKES_WORD(name, kind)                                                 \
-    static inline int pulled_##name(struct builder *b, struct item *o)         \
-    {                                                                          \
-        (void)b;                                                               \
-        return pull_word(kind, o);                                             \
-    }
-#define TAKES_BYTES(name, call)                                                \
-    static inline int pulled_##name(struct builder *b, const char *all,        \
-                                    const char *at, uint32_t n,                \
-                                    struct item *o)                            \
-    {                                                                          \
-        (void)all, (void)b, (void)at, (void)n;                                 \
-        return call;                                                           \
-    }
-TAKES_VALUE(uint8, uint8_t, pull_int(x, o))
-TAKES_VALUE(uint16, uint16_t, pull_int(x, o))
-TAKES_VALUE(uint32, uint32_t, pull_int(x, o))
-TAKES_VALUE(uint64, uint64_t, pull_uint64(x, o))
-TAKES_VALUE(int8, int8_t, pull_int(x, o))
-TAKES_VALUE(int16, int16_t, pull_int(x, o))
-TAKES_VALUE(int32, int32_t, pull_int(x, o))
-TAKES_VALUE(int64, int64_t, pull_int(x, o))
-TAKES_VALUE(float, float, pull_real(VALUE_FLOAT, (double)x, o))
-TAKES_VALUE(double, double, pull_real(VALUE_DOUBLE, x, o))
-TAKES_VALUE(array, uint32_t, pull_open(b, x, false, o))
-TAKES_VALUE(map, uint32_t, pull_open(b, x, true, o))
-TAKES_WORD(nil, VALUE_NULL)
-TAKES_WORD(true, VALUE_BOOL)
-TAKES_WORD(false, VALUE_BOOL)
-TAKES_BYTES(str, pull_str(b, at, n, o))
-TAKES_BYTES(bin, pull_word(VALUE_OTHER, o))
-TAKES_BYTES(ext, pull_ext(b, (const uint8_t *)at, n, o))
-
-static inline struct item pulled_root(struct builder *b)
+/* A map at this depth: its keys and values into the element. */
+static bool take_map(struct cursor *c, uint64_t n, int depth,
+                     struct element *e)
 {
-    (void)b;
-    return (struct item){.kind = VALUE_NULL};
+    for (uint64_t i = 0; i < n; i++) {
+        struct value key, v;
+        struct opened o;
+        const uint8_t *here = c->at;
+        if (!take(c, &key, &o))
+            return false;
+        if (o.kind != OPENED_VALUE)
+            return fail(c, "a key of a map is a list or a map: send strings");
+        if (!take(c, &v, &o))
+            return false;
+        if (o.kind == OPENED_LIST && !take_list(c, o.n, depth + 1, &v))
+            return false;
+        if (o.kind == OPENED_MAP) {
+            v.kind = VALUE_OTHER;
+            if (!skip_inside(c, &o, depth + 1))
+                return false;
+        }
+        if (key.kind != VALUE_TEXT)
+            continue;
+        e->here = (int)(here - c->begin);
+        element_set(e, element_key(key.text.at, (size_t)key.text.len), &v);
+    }
+    return true;
 }
 
-static inline int pulled_array_item(struct builder *b, struct item *list,
-                                    struct item o)
+/* The elements of the outer list, or the one map. */
+static bool take_elements(struct cursor *c, struct wire_decoder *d,
+                          bool *is_wrong_version)
 {
-    return pull_list_item(b, list, &o);
-}
-
-static inline int pulled_map_item(struct builder *b, struct item *map,
-                                  struct item key, struct item o)
-{
-    return pull_map_item(b, map, &key, &o);
-}
-
-#define MSGPACK_EMBED_STACK_SIZE       WIRE_DEPTH_MAX
-#define msgpack_unpack_struct(name)    struct parser##name
-#define msgpack_unpack_func(ret, name) static inline ret parser##name
-#define msgpack_unpack_callback(name)  pulled##name
-#define msgpack_unpack_object          struct item
-#define msgpack_unpack_user            struct builder
-#include <msgpack/unpack_define.h>
-#include <msgpack/unpack.h>
-#include <msgpack/unpack_template.h>
-
-/* Why the template stopped, unless a callback has said so. */
-static const char *reason_of(int result)
-{
-    switch (result) {
-    case MSGPACK_UNPACK_CONTINUE:
-        return truncated;
-    case MSGPACK_UNPACK_NOMEM_ERROR:
-        return "nested deeper than 8 levels: send flat maps";
-    default:
-        return "a byte that MessagePack never uses: check the encoder";
+    struct opened outer, o;
+    struct value v;
+    struct element e;
+    if (!take(c, &v, &outer))
+        return false;
+    if (outer.kind == OPENED_MAP) {
+        decode_begin(d, &e);
+        if (!take_map(c, outer.n, 0, &e))
+            return false;
+        decode_take(d, &e, is_wrong_version);
+        return true;
     }
+    if (outer.kind != OPENED_LIST)
+        return fail(c, "neither a map nor a list of maps: send one of them");
+    for (uint64_t i = 0; i < outer.n; i++) {
+        decode_begin(d, &e);
+        e.here = (int)(c->at - c->begin);
+        if (!take(c, &v, &o))
+            return false;
+        if (o.kind != OPENED_MAP)
+            element_wrong(&e, "an element of the list is no map: send maps");
+        if (o.kind == OPENED_MAP ? !take_map(c, o.n, 1, &e)
+                                 : o.kind == OPENED_LIST &&
+                                       !skip_inside(c, &o, 1))
+            return false;
+        decode_take(d, &e, is_wrong_version);
+    }
+    return true;
 }
 
 const char *decode_msgpack(struct wire_decoder *d, const uint8_t *bytes,
                            size_t len, bool *is_wrong_version)
 {
-    struct parser_context c;
-    size_t at = 0;
-    c.user.d = d;
-    c.user.is_wrong_version = is_wrong_version;
-    c.user.bytes = (const char *)bytes;
-    c.user.len = len;
-    c.user.depth = 0;
-    c.user.is_list = false;
-    c.user.broken = NULL;
-    parser_init(&c);
-    int result = parser_execute(&c, (const char *)bytes, len, &at);
-    struct item outer = parser_data(&c);
-    if (result != 1) {
-        d->at = (int)at;
-        return c.user.broken ? c.user.broken : reason_of(result);
+    struct cursor c = {bytes, bytes, bytes + len, NULL};
+    if (!take_elements(&c, d, is_wrong_version)) {
+        d->at = (int)(c.at - bytes);
+        return c.broken;
     }
-    if (!outer.is_nested)
-        return "neither a map nor a list of maps: send one of them";
-    if (outer.role == ROLE_ELEMENT)
-        decode_take(d, &c.user.e, is_wrong_version);
-    while (at < len &&
-           (bytes[at] == 0 || bytes[at] == '\n' || bytes[at] == '\r'))
-        at++;
-    if (at == len)
+    while (c.at < c.end && (*c.at == 0 || *c.at == '\n' || *c.at == '\r'))
+        c.at++;
+    if (c.at == c.end)
         return NULL;
-    d->at = (int)at;
+    d->at = (int)(c.at - bytes);
     return "more bytes behind the end: send one map or one list";
 }

@@ -10,7 +10,7 @@
 #include <time.h>
 
 #include "core/math/random.h"
-#include "core/wire/decode.h"
+#include "core/wire/decode_form.h"
 #include "tests/suite.h"
 
 enum { TEXT_MAX = 4000, KEYS_MAX = 9 };
@@ -393,6 +393,44 @@ START_TEST(what_is_accepted_of_mutated_messagepack_is_messagepack)
 }
 END_TEST
 
+/* `code` in n bytes, whether or not UTF-8 allows it. */
+static void put_code(uint8_t *out, uint32_t code, int n)
+{
+    static const uint8_t lead[] = {0, 0, 0xc0, 0xe0, 0xf0};
+    for (int i = n - 1; i > 0; i--, code >>= 6)
+        out[i] = (uint8_t)(0x80 | (code & 0x3f));
+    out[0] = (uint8_t)(lead[n] | code);
+}
+
+/* RFC 3629: U+0000..U+10FFFF without surrogates, each in its shortest form. */
+START_TEST(utf8_is_every_code_point_in_its_shortest_form_and_nothing_else)
+{
+    static const uint32_t end[] = {0, 0x80, 0x800, 0x10000, 0x200000};
+    for (int n = 1; n <= 4; n++)
+        for (uint32_t code = 0; code < end[n]; code++) {
+            uint8_t s[24];
+            bool is_good = code >= end[n - 1] && code <= 0x10ffff &&
+                           (code < 0xd800 || code > 0xdfff);
+            size_t before = code % 11, after = code % 9;
+            memset(s, 'x', sizeof s);
+            put_code(s + before, code, n);
+            size_t len = before + (size_t)n + after;
+            ck_assert_msg(decode_is_utf8(s, len) == is_good, "%x in %d", code,
+                          n);
+            /* cut inside the character */
+            ck_assert(n == 1 || !decode_is_utf8(s, before + (size_t)n - 1));
+        }
+    for (size_t len = 1; len <= 20; len++)
+        for (size_t i = 0; i < len; i++) {
+            uint8_t s[20];
+            memset(s, 'x', sizeof s);
+            ck_assert(decode_is_utf8(s, len));
+            s[i] = 0x80; /* a continuation of nothing */
+            ck_assert(!decode_is_utf8(s, len));
+        }
+}
+END_TEST
+
 START_TEST(decimal_texts_read_as_strtod_reads_them)
 {
     struct random r;
@@ -429,6 +467,8 @@ Suite *suite(void)
     tcase_add_loop_test(
         t, random_content_comes_out_of_messagepack_as_it_went_in, 1, 4);
     tcase_add_test(t, what_is_accepted_of_mutated_messagepack_is_messagepack);
+    tcase_add_test(
+        t, utf8_is_every_code_point_in_its_shortest_form_and_nothing_else);
     tcase_add_test(t, decimal_texts_read_as_strtod_reads_them);
     suite_add_tcase(s, t);
     return s;
