@@ -80,3 +80,11 @@ else()
            $<TARGET_FILE:engine>
            WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
 endif()
+
+# One hash for gcc and clang, -O0 and -O3.
+if(NOT SANITIZE)
+  add_test(NAME golden.builds COMMAND tests/golden.sh
+           WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
+  set_tests_properties(golden.builds PROPERTIES TIMEOUT 1200
+                       ENVIRONMENT "GOLDEN_DIR=${PROJECT_BINARY_DIR}/golden")
+endif()
