@@ -239,4 +239,7 @@ void loading_sensors(struct loading *l)
     if (l->problems->n == problems)
         unread_tracks(l);
     qsort(rig->sensor, (size_t)rig->n_sensors, sizeof *rig->sensor, by_name);
+    for (int i = 0; i < rig->n_sensors; i++) /* look-ups go by it */
+        rig->sensor[i].key =
+            rig_key(rig->sensor[i].name, strlen(rig->sensor[i].name));
 }
