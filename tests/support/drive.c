@@ -9,12 +9,19 @@
 
 #include "core/wire/encode.h"
 
+/* The power of two that holds n bytes and a NUL. */
+static size_t room(size_t n)
+{
+    size_t size = 4096;
+    while (size < n + 1)
+        size *= 2;
+    return size;
+}
+
 static void append(char **text, size_t *n, const char *line, size_t len)
 {
-    size_t size = 1;
-    while (size < *n + len + 1)
-        size *= 2;
-    *text = realloc(*text, size);
+    if (!*text || room(*n + len) != room(*n))
+        *text = realloc(*text, room(*n + len));
     memcpy(*text + *n, line, len);
     *n += len;
     (*text)[*n] = 0;

@@ -174,7 +174,7 @@ START_TEST(mutants_change_nothing_and_are_all_counted)
     ck_assert_uint_eq(total - n_good,
                       c->total.outcome[OUTCOME_UNKNOWN_SENSOR] +
                           c->total.outcome[OUTCOME_UNKNOWN_TRACK]);
-    printf("mutants: %d, of which decoded %" PRIu64 ", malformed %" PRIu64
+    printf("mutants: seed 20260, %d, of which decoded %" PRIu64 ", malformed %" PRIu64
            "\n",
            n, c->datagrams[DATAGRAM_DECODED] - n_good,
            c->datagrams[DATAGRAM_MALFORMED]);
