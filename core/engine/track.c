@@ -104,13 +104,6 @@ static int32_t *entry(const struct track *t, int i)
     return &t->order[at < t->capacity ? at : at - t->capacity];
 }
 
-static struct track_state *checkpoint(const struct track *t,
-                                      const struct step *s)
-{
-    return (struct track_state *)(void *)(t->states +
-                                          (size_t)s->state * t->state_bytes);
-}
-
 static uint64_t bits_of(double x)
 {
     uint64_t bits;
@@ -174,27 +167,21 @@ bool track_insert(struct track *t, int i, const struct step *s)
     return true;
 }
 
-static void free_checkpoint(struct track *t, struct step *s)
+void track_free_checkpoint(struct track *t, struct step *s)
 {
     if (s->state >= 0)
         t->free_state[t->n_free_states++] = s->state;
     s->state = -1;
 }
 
-/* Forgets the oldest step, whatever it is. */
-static void pop(struct track *t)
+void track_drop_first(struct track *t)
 {
-    free_checkpoint(t, track_step(t, 0));
+    track_free_checkpoint(t, track_step(t, 0));
     t->free_slot[t->n_free_slots++] = *entry(t, 0);
     t->head = t->head + 1 < t->capacity ? t->head + 1 : 0;
     t->n--;
     if (t->scratch_at >= 0)
         t->scratch_at--;
-}
-
-void track_drop_first(struct track *t)
-{
-    pop(t);
 }
 
 void track_confirm(struct track *t)
@@ -210,211 +197,4 @@ int track_next_settled(const struct track *t)
     if (t->kind->is_prefix && t->n_final == 0 && next == 0)
         next = 1;
     return next < t->n_laid ? next : -1;
-}
-
-/* --- laying ---------------------------------------------------------------- */
-
-/* The newest checkpoint before step i, and the step after it. */
-static const struct track_state *ground(const struct track *t, int i,
-                                        int *from)
-{
-    for (int k = i - 1; k >= 0; k--) {
-        const struct step *s = track_step(t, k);
-        if (s->state >= 0) {
-            *from = k + 1;
-            return checkpoint(t, s);
-        }
-    }
-    *from = 0;
-    return t->base;
-}
-
-static void take_time(struct track *t, const struct track_state *from,
-                      struct track_state *to, const struct lay *lay,
-                      struct step *s)
-{
-    const struct rig_kind *kind = t->kind;
-    bool is_reborn = kind->is_prefix && from->is_born &&
-                     s->t_ns - from->kf.t_ns >
-                         kind->lost_after_ns + TRACK_RETIRE_NS;
-    if (!from->is_born || is_reborn) {
-        memset(to, 0, sizeof *to);
-        to->is_born = 1;
-        int64_t t_ns = kind->has_start_at && kind->start_at_ns < s->t_ns
-                           ? kind->start_at_ns
-                           : s->t_ns;
-        kf_birth(kind, t_ns, &to->kf);
-        kf_predict(kind, lay->work, &to->kf, s->t_ns, &to->kf);
-        s->flags |= STEP_BIRTH;
-    } else if (from->is_floating) {
-        if (to != from)
-            memcpy(to, from, t->state_bytes);
-        to->is_floating = 0;
-        to->kf.t_ns = s->t_ns;
-    } else {
-        to->refused_since_ns = from->refused_since_ns;
-        to->refused = from->refused;
-        to->widened = from->widened;
-        to->is_born = 1;
-        to->is_floating = 0;
-        kf_predict(kind, lay->work, &from->kf, s->t_ns, &to->kf);
-    }
-}
-
-static bool can_restart(const struct rig *rig, const struct rig_kind *kind)
-{
-    for (int i = 0; i < rig->n_sensors; i++)
-        if (&rig->kind[rig->sensor[i].kind] == kind &&
-            !reads_is_linear(&rig->sensor[i].reads))
-            return false;
-    return true;
-}
-
-/* All that was heard lately was refused: the track, not the sensors, must be
- * wrong.  Returns true when it was widened or restarted. */
-static bool recover(struct track *t, const struct lay *lay,
-                    struct track_state *st, struct step *s)
-{
-    const struct rig_kind *kind = t->kind;
-    if (st->refused++ == 0)
-        st->refused_since_ns = s->t_ns;
-    if (st->refused < kind->recover_refused ||
-        s->t_ns - st->refused_since_ns < kind->recover_for_ns)
-        return false;
-    st->refused = 0;
-    if (st->widened >= TRACK_RESTART_AFTER && can_restart(lay->rig, kind)) {
-        kf_restart(kind, lay->work, &st->kf);
-        st->widened = 0;
-        s->flags |= STEP_RESTARTED;
-    } else {
-        kf_widen(kind, lay->work, &st->kf);
-        st->widened = st->widened < 255 ? (uint8_t)(st->widened + 1) : 255;
-        s->flags |= STEP_WIDENED;
-    }
-    return true;
-}
-
-static void lay_step(struct track *t, const struct lay *lay,
-                     const struct track_state *from, struct track_state *to,
-                     struct step *s)
-{
-    const struct rig_sensor *sensor = &lay->rig->sensor[s->sensor];
-    const double *gate = sensor->has_gate ? sensor->gate : NULL;
-    double z[READS_MAX];
-    struct kf_seen seen;
-    s->flags = 0;
-    for (int i = 0; i < sensor->reads.m; i++)
-        z[i] = s->v[i] * sensor->scale[i] + sensor->shift[i];
-    take_time(t, from, to, lay, s);
-    bool is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z,
-                             sensor->r, gate, &seen);
-    s->nis = s->nis_used = seen.nis;
-    s->dof = (uint8_t)seen.dof;
-    if (!is_used && recover(t, lay, to, s)) {
-        is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z,
-                            sensor->r, gate, &seen);
-        s->nis_used = seen.nis;
-    }
-    memcpy(s->v + t->m_max, seen.s, (size_t)seen.dof * sizeof(double));
-    if (is_used) {
-        s->flags |= STEP_ACCEPTED;
-        to->refused = 0;
-        if (!(s->flags & STEP_WIDENED))
-            to->widened = 0;
-    }
-    s->refused = to->refused;
-    ++*lay->steps;
-}
-
-int track_lay(struct track *t, const struct lay *lay, int64_t until_ns)
-{
-    if (t->n_laid >= t->n || track_step(t, t->n_laid)->t_ns > until_ns)
-        return 0;
-    int from = 0, n = 0;
-    const struct track_state *tip = ground(t, t->n_laid, &from);
-    int since = 0;
-    /* Appending: the newest state is at hand and nothing is laid again. */
-    if (from < t->n_laid && t->scratch_at == t->n_laid) {
-        since = t->n_laid - from;
-        from = t->n_laid;
-        tip = t->scratch;
-    }
-    for (int i = from; i < t->n; i++) {
-        struct step *s = track_step(t, i);
-        if (s->t_ns > until_ns && i >= t->n_laid)
-            break;
-        bool is_checkpoint = ++since >= t->stride;
-        if (!is_checkpoint)
-            free_checkpoint(t, s);
-        else if (s->state < 0)
-            s->state = t->free_state[--t->n_free_states];
-        struct track_state *to = is_checkpoint ? checkpoint(t, s) : t->scratch;
-        lay_step(t, lay, tip, to, s);
-        if (is_checkpoint)
-            since = 0;
-        tip = to;
-        n++;
-        if (i >= t->n_laid)
-            t->n_laid = i + 1;
-    }
-    t->scratch_at = tip == t->scratch ? t->n_laid : -1;
-    return n;
-}
-
-const struct track_state *track_tip(const struct track *t)
-{
-    if (t->n_laid == 0)
-        return t->base->is_born && !t->base->is_floating ? t->base : NULL;
-    const struct step *s = track_step(t, t->n_laid - 1);
-    return s->state >= 0 ? checkpoint(t, s) : t->scratch;
-}
-
-/* --- settling -------------------------------------------------------------- */
-
-struct step *track_settle(struct track *t, const struct lay *lay,
-                          const struct track_state **state)
-{
-    int i = t->n_settled;
-    struct step *s = track_step(t, i);
-    if (s->state >= 0) {
-        *state = checkpoint(t, s);
-    } else {
-        int from;
-        const struct track_state *tip = ground(t, i, &from);
-        if (from < i)
-            tip = t->final; /* as the settling before left it */
-        lay_step(t, lay, tip, t->final, s);
-        *state = t->final;
-    }
-    t->n_settled++;
-    /* The newest settled checkpoint is ground enough. */
-    int keep = t->n_settled - 1;
-    while (keep > 0 && track_step(t, keep)->state < 0)
-        keep--;
-    for (; keep > 0; keep--) {
-        pop(t);
-        t->n_settled--;
-        t->n_laid--;
-    }
-    return track_step(t, t->n_settled - 1);
-}
-
-void track_reanchor(struct track *t, struct kf_work *work)
-{
-    const struct track_state *tip = track_tip(t);
-    if (tip) {
-        memcpy(t->base, tip, t->state_bytes);
-        for (int i = 0; i < t->kind->n; i++)
-            work->b[i] = 10;
-        ud_scale(t->kind->n, kf_ud(&t->base->kf), work->b);
-        kf_restart(t->kind, work, &t->base->kf);
-        t->base->is_floating = 1;
-        t->base->refused = 0;
-        t->base->widened = 0;
-    }
-    while (t->n > 0)
-        pop(t);
-    t->n_settled = t->n_laid = 0;
-    t->scratch_at = -1;
-    t->has_greatest = false;
 }

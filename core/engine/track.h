@@ -177,8 +177,17 @@ void track_confirm(struct track *t);
  * order of what settles is a matter of stamps alone. */
 int track_next_settled(const struct track *t);
 
-/* A lone candidate's measurement is given up. */
+/* Forgets the oldest step, whatever it is. */
 void track_drop_first(struct track *t);
+
+/* The checkpoint after a step that has one, and giving it back. */
+static inline struct track_state *track_checkpoint(const struct track *t,
+                                                   const struct step *s)
+{
+    return (struct track_state *)(void *)(t->states +
+                                          (size_t)s->state * t->state_bytes);
+}
+void track_free_checkpoint(struct track *t, struct step *s);
 
 /* The line jumped: all steps are settled; what is known stays only in the
  * constants, widened. */

@@ -401,6 +401,27 @@ START_TEST(depth_bytes_behind_the_end_and_wrong_versions_in_messagepack)
 }
 END_TEST
 
+START_TEST(every_width_of_messagepack_is_read)
+{
+    /* int8 -3, int16 -300, int32 -70000, int64 -2^40; array32 in map16 */
+    ck_assert_int_eq(
+        PACKED("\xde\0\3\xa6sensor\xa1"
+               "a\xa1z\xdd\0\0\0\4\xd0\xfd\xd1\xfe\xd4\xd2\xff\xfe\xee"
+               "\x90\xd3\xff\xff\xff\0\0\0\0\0\x05\x01"),
+        DATAGRAM_DECODED);
+    static const double z[] = {-3, -300, -70000, -1099511627776.0};
+    ck_assert_int_eq(d.element[0].n_z, 4);
+    for (int i = 0; i < 4; i++)
+        ck_assert_double_eq(d.element[0].z[i], z[i]);
+    ck_assert_int_eq(PACKED("\xdc\0\1\xdf\0\0\0\1\xa4mark\xd9\4stop"),
+                     DATAGRAM_DECODED);
+    ck_assert_int_eq(PACKED("\x82\xa6sensor\xa1"
+                            "a\xa1z\x92\xa1x\x01"),
+                     DATAGRAM_MALFORMED);
+    ck_assert(strstr(d.reason, "z is neither") != NULL);
+}
+END_TEST
+
 START_TEST(every_cut_of_a_datagram_is_malformed)
 {
     static const char whole[] = "\x84\xa6sensor\xa1"
@@ -464,6 +485,7 @@ Suite *suite(void)
     tcase_add_test(t, uncertainties_and_sequence_numbers_are_taken);
     tcase_add_test(
         t, depth_bytes_behind_the_end_and_wrong_versions_in_messagepack);
+    tcase_add_test(t, every_width_of_messagepack_is_read);
     tcase_add_test(t, every_cut_of_a_datagram_is_malformed);
     tcase_add_test(t,
                    infinite_readings_are_passed_on_and_infinite_times_are_not);

@@ -22,7 +22,7 @@ struct content {
     bool is_scalar, has_seq, has_track, has_note, has_unknown;
     double z[READS_MAX], u, t; /* z NaN: null */
     int64_t ns;
-    char stamp[40];
+    char stamp[80];
     uint64_t seq;
     int order[KEYS_MAX];
 };
