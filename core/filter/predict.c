@@ -23,20 +23,20 @@ UNROLLED void predict_axes(const int n, const int levels,
                            const struct kf *from, double T, struct kf *to)
 {
     const double *ud = from->v + n;
-    double D[UD_MAX], Qd[UD_MAX];
+    double D[UD_MAX], Qd[UD_MAX], x_new[UD_MAX];
     const double phi[3] = {1, T, T * T / 2};         /* Phi               */
-    const double qu[3] = {1, T / 2, T * T / 6};      /* Qu                */
+    const double qu[3] = {1, T / 2, T * T * (1.0 / 6)};      /* Qu                */
     const double T2 = T * T;
     for (int i = 0; i < n; i++) {
         int level = i % levels, end = i - level + levels;
         double qT = kind->block[i / levels].q * T, x = 0;
         D[i] = ud[UD_AT(i, i)];
         Qd[i] = level == levels - 1   ? qT
-                : level == levels - 2 ? qT * T2 / 12
-                                      : qT * T2 * T2 / 720;
+                : level == levels - 2 ? qT * T2 * (1.0 / 12)
+                                      : qT * T2 * T2 * (1.0 / 720);
         for (int c = i; c < end; c++)
             x += phi[c - i] * from->v[c];            /* x = Phi x         */
-        to->v[i] = x;
+        x_new[i] = x;
         for (int j = i; j < n; j++) {
             double sum = j < end ? phi[j - i] : 0;
             for (int c = i; c < end && c < j; c++)
@@ -45,6 +45,8 @@ UNROLLED void predict_axes(const int n, const int levels,
             V[i * n + j] = j < end ? qu[j - i] : 0;
         }
     }
+    for (int i = 0; i < n; i++) /* only now: *to may be *from */
+        to->v[i] = x_new[i];
     ud_gather(n, true, W, V, D, Qd, to->v + n);
 }
 

@@ -24,6 +24,11 @@ double real_abs(double x);
 double real_floor(double x);
 double real_nan(void);
 
+static inline double real_infinity(void)
+{
+    return __builtin_inf();
+}
+
 /* e^x; 0 below -745.13, +inf above 709.78. */
 double real_exp(double x);
 

@@ -40,7 +40,7 @@ static void velocity(const struct block *b, double T, struct transition *t)
     Qu[1] = T / 2;
     Qu[n] = 0;
     Qu[n + 1] = 1;
-    t->Qd[b->at] = qT * T * T / 12;
+    t->Qd[b->at] = qT * T * T * (1.0 / 12);
     t->Qd[b->at + 1] = qT;
 }
 
@@ -58,9 +58,9 @@ static void acceleration(const struct block *b, double T, struct transition *t)
     Phi[1] = Phi[n + 2] = T;
     Phi[2] = T2 / 2;
     Qu[1] = Qu[n + 2] = T / 2;
-    Qu[2] = T2 / 6;
-    t->Qd[b->at] = qT * T2 * T2 / 720;
-    t->Qd[b->at + 1] = qT * T2 / 12;
+    Qu[2] = T2 * (1.0 / 6);
+    t->Qd[b->at] = qT * T2 * T2 * (1.0 / 720);
+    t->Qd[b->at + 1] = qT * T2 * (1.0 / 12);
     t->Qd[b->at + 2] = qT;
 }
 
