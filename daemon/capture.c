@@ -7,32 +7,58 @@
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
-#include <sys/mman.h>
 #include <sys/stat.h>
 #include <unistd.h>
+
+/* What one read brings at most, and the largest record fits in: it stays in
+ * the processor's cache, which a mapped file does not. */
+enum { BUFFER_SIZE = 2 * PCAP_SNAPLEN, RECORD_SIZE_MAX = PCAP_SNAPLEN + 16 };
 
 struct capture {
     char **path; /* files in order                              */
     size_t n_paths, at_path;
-    uint8_t *bytes; /* of the file being read, NULL = none         */
-    size_t len, at;
+    int fd;          /* of the file being read, -1 = none           */
+    uint64_t unread; /* bytes of it that no read brought yet        */
+    size_t at, n;    /* next byte and end of what the buffer holds  */
     struct pcap_form form;
     struct capture_tally tally;
+    uint8_t buffer[BUFFER_SIZE];
 };
 
-static void unmap(struct capture *c)
+static void close_file(struct capture *c)
 {
-    if (c->bytes)
-        munmap(c->bytes, c->len);
-    c->bytes = NULL;
-    c->len = c->at = 0;
+    if (c->fd >= 0)
+        close(c->fd);
+    c->fd = -1;
+    c->at = c->n = 0;
+    c->unread = 0;
+}
+
+/* Moves what is left to the front and reads on; false at the end. */
+static bool read_on(struct capture *c)
+{
+    c->n -= c->at;
+    memmove(c->buffer, c->buffer + c->at, c->n);
+    c->at = 0;
+    size_t room = sizeof c->buffer - c->n;
+    if (room > c->unread)
+        room = (size_t)c->unread;
+    ssize_t got;
+    do
+        got = room > 0 ? read(c->fd, c->buffer + c->n, room) : 0;
+    while (got < 0 && errno == EINTR);
+    if (got <= 0)
+        return false;
+    c->n += (size_t)got;
+    c->unread -= (uint64_t)got;
+    return true;
 }
 
 void capture_close(struct capture *c)
 {
     if (!c)
         return;
-    unmap(c);
+    close_file(c);
     for (size_t i = 0; i < c->n_paths; i++)
         free(c->path[i]);
     free(c->path);
@@ -55,13 +81,13 @@ static const char *linktype_name(uint32_t linktype)
     }
 }
 
-/* Maps the file and checks its head. */
-static status map(struct capture *c, const char *path, struct err *err)
+/* Opens the file and checks its head. */
+static status open_file(struct capture *c, const char *path, struct err *err)
 {
     struct stat st;
-    int fd = open(path, O_RDONLY | O_CLOEXEC);
+    c->fd = open(path, O_RDONLY | O_CLOEXEC);
     status result = ST_OK;
-    if (fd < 0 || fstat(fd, &st) != 0) {
+    if (c->fd < 0 || fstat(c->fd, &st) != 0) {
         result = err_set(err, ST_IO, "%s: cannot be read: %s", path,
                          strerror(errno));
         goto out;
@@ -73,17 +99,13 @@ static status map(struct capture *c, const char *path, struct err *err)
                          path, (long long)st.st_size, PCAP_FILE_HEAD_SIZE);
         goto out;
     }
-    c->len = (size_t)st.st_size;
-    void *at = mmap(NULL, c->len, PROT_READ, MAP_PRIVATE, fd, 0);
-    if (at == MAP_FAILED) {
-        result = err_set(err, ST_IO, "%s: cannot be mapped: %s", path,
+    c->unread = (uint64_t)st.st_size;
+    if (!read_on(c)) {
+        result = err_set(err, ST_IO, "%s: cannot be read: %s", path,
                          strerror(errno));
         goto out;
     }
-    c->bytes = at;
-    c->at = PCAP_FILE_HEAD_SIZE;
-    madvise(at, c->len, MADV_SEQUENTIAL);
-    if (!pcap_read_file_head(c->bytes, c->len, &c->form))
+    if (!pcap_read_file_head(c->buffer, c->n, &c->form))
         result = err_set(err, ST_PARSE,
                          "%s: does not begin like a pcap file; pcapng is not "
                          "built yet, save it as pcap",
@@ -94,13 +116,12 @@ static status map(struct capture *c, const char *path, struct err *err)
                     "%s: link type %u, %s, is not built yet; only RAW "
                     "(101) is read",
                     path, c->form.linktype, linktype_name(c->form.linktype));
+    c->at = PCAP_FILE_HEAD_SIZE;
     c->tally.n_files++;
-    c->tally.n_bytes += c->len;
+    c->tally.n_bytes += (uint64_t)st.st_size;
 out:
-    if (fd >= 0)
-        close(fd);
     if (result != ST_OK)
-        unmap(c);
+        close_file(c);
     return result;
 }
 
@@ -155,9 +176,10 @@ status capture_open(struct capture **out, const char *path, struct err *err)
     *out = NULL;
     if (!c)
         return err_set(err, ST_NOMEM, "out of memory");
+    c->fd = -1;
     status st = list(c, path, err);
     if (st == ST_OK)
-        st = map(c, c->path[0], err);
+        st = open_file(c, c->path[0], err);
     if (st != ST_OK) {
         capture_close(c);
         return st;
@@ -171,12 +193,12 @@ status capture_open(struct capture **out, const char *path, struct err *err)
  * altogether. */
 static bool next_file(struct capture *c)
 {
-    c->tally.torn_bytes += c->len - c->at;
-    unmap(c);
+    c->tally.torn_bytes += c->n - c->at + c->unread;
+    close_file(c);
     while (c->at_path < c->n_paths) {
         struct stat st;
         const char *path = c->path[c->at_path++];
-        if (map(c, path, NULL) == ST_OK)
+        if (open_file(c, path, NULL) == ST_OK)
             return true;
         if (stat(path, &st) == 0)
             c->tally.torn_bytes += (uint64_t)st.st_size;
@@ -186,16 +208,9 @@ static bool next_file(struct capture *c)
 
 bool capture_next(struct capture *c, struct pcap_record *record)
 {
-    for (;;) {
+    while (c->fd >= 0) {
         size_t used = 0;
-        if (!c->bytes)
-            return false;
-        if (c->at == c->len) {
-            if (!next_file(c))
-                return false;
-            continue;
-        }
-        switch (pcap_read_record(&c->form, c->bytes + c->at, c->len - c->at,
+        switch (pcap_read_record(&c->form, c->buffer + c->at, c->n - c->at,
                                  record, &used)) {
         case PCAP_RECORD:
             c->at += used;
@@ -205,12 +220,13 @@ bool capture_next(struct capture *c, struct pcap_record *record)
             c->at += used;
             c->tally.n_skipped++;
             break;
-        case PCAP_TORN:
-            if (!next_file(c))
-                return false;
+        case PCAP_TORN: /* in the buffer; in the file too if no more comes */
+            if (c->n - c->at > RECORD_SIZE_MAX || !read_on(c))
+                next_file(c);
             break;
         }
     }
+    return false;
 }
 
 const struct capture_tally *capture_tally(const struct capture *c)

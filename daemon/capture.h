@@ -1,6 +1,6 @@
 /* capture.h - reads captures: one pcap file, or a folder of segments in order.
  *
- * Files are mapped and read in place.  A torn tail is normal after a crash:
+ * Files are read by the buffer, records in place.  A torn tail is normal after a crash:
  * every whole record is given, the rest is stated in bytes.
  */
 /* SPDX-License-Identifier: Apache-2.0 */

@@ -23,8 +23,7 @@ static void widen(struct track_size *a, const struct track_size *b)
         a->state_bytes = b->state_bytes;
 }
 
-void roster_layout(struct roster *r, const struct rig *rig,
-                   struct arena *arena)
+void roster_layout(struct roster *r, const struct rig *rig, struct arena *arena)
 {
     int n_fixed = n_fixed_kinds(rig), place = 0;
     struct track_size any = {0};
@@ -54,13 +53,6 @@ void roster_layout(struct roster *r, const struct rig *rig,
         track[i].place = i;
 }
 
-static int compare(const char *id, size_t len, const char *there)
-{
-    size_t n = strlen(there);
-    int order = len <= 8 && n <= 8 ? 0 : memcmp(id, there, len < n ? len : n);
-    return order != 0 ? order : (len > n) - (len < n);
-}
-
 /* Where an id stands or belongs in the index. */
 static int search(const struct roster *r, const char *id, size_t len,
                   bool *is_there)
@@ -72,7 +64,7 @@ static int search(const struct roster *r, const char *id, size_t len,
         int middle = (low + high) / 2;
         int order = key < r->key[middle] ? -1 : key > r->key[middle];
         if (order == 0)
-            order = compare(id, len, r->track[r->by_id[middle]].id);
+            order = rig_compare(id, len, r->track[r->by_id[middle]].id);
         if (order == 0) {
             *is_there = true;
             return middle;
@@ -92,8 +84,7 @@ static struct track *open(struct roster *r, int place, int kind,
     int at = search(r, id->at, (size_t)id->len, &is_there);
     memmove(r->by_id + at + 1, r->by_id + at,
             (size_t)(r->n - at) * sizeof *r->by_id);
-    memmove(r->key + at + 1, r->key + at,
-            (size_t)(r->n - at) * sizeof *r->key);
+    memmove(r->key + at + 1, r->key + at, (size_t)(r->n - at) * sizeof *r->key);
     r->by_id[at] = place;
     r->key[at] = rig_key(id->at, (size_t)id->len);
     r->n++;
@@ -139,8 +130,7 @@ struct track *roster_add(struct roster *r, int kind, const struct text *id,
                          const struct sender *from, int64_t now_ns)
 {
     struct roster_sender *s = sender_of(r, from);
-    if (!s || r->n == r->n_places ||
-        s->n_ids >= r->rig->max_ids_per_sender)
+    if (!s || r->n == r->n_places || s->n_ids >= r->rig->max_ids_per_sender)
         return NULL;
     for (int i = r->n_fixed; i < r->n_places; i++) {
         if (r->track[i].is_used)

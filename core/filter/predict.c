@@ -24,9 +24,10 @@ UNROLLED void predict_axes(const int n, const int levels,
 {
     const double *ud = from->v + n;
     double D[UD_MAX], Qd[UD_MAX], x_new[UD_MAX];
-    const double phi[3] = {1, T, T * T / 2};         /* Phi               */
-    const double qu[3] = {1, T / 2, T * T * (1.0 / 6)};      /* Qu                */
+    const double phi[3] = {1, T, T * T / 2};            /* Phi               */
+    const double qu[3] = {1, T / 2, T * T * (1.0 / 6)}; /* Qu                */
     const double T2 = T * T;
+    UD_UNROLL
     for (int i = 0; i < n; i++) {
         int level = i % levels, end = i - level + levels;
         double qT = kind->block[i / levels].q * T, x = 0;
@@ -34,17 +35,21 @@ UNROLLED void predict_axes(const int n, const int levels,
         Qd[i] = level == levels - 1   ? qT
                 : level == levels - 2 ? qT * T2 * (1.0 / 12)
                                       : qT * T2 * T2 * (1.0 / 720);
+        UD_UNROLL
         for (int c = i; c < end; c++)
-            x += phi[c - i] * from->v[c];            /* x = Phi x         */
+            x += phi[c - i] * from->v[c]; /* x = Phi x         */
         x_new[i] = x;
+        UD_UNROLL
         for (int j = i; j < n; j++) {
             double sum = j < end ? phi[j - i] : 0;
+            UD_UNROLL
             for (int c = i; c < end && c < j; c++)
                 sum += phi[c - i] * ud[UD_AT(c, j)];
-            W[i * n + j] = sum;                      /* W = Phi U         */
+            W[i * n + j] = sum; /* W = Phi U         */
             V[i * n + j] = j < end ? qu[j - i] : 0;
         }
     }
+    UD_UNROLL
     for (int i = 0; i < n; i++) /* only now: *to may be *from */
         to->v[i] = x_new[i];
     ud_gather(n, true, W, V, D, Qd, to->v + n);
@@ -69,8 +74,8 @@ INSTANCE(9, 3)
 
 /* False when there is no such instance. */
 static inline bool predict_kinematic(const struct rig_kind *kind,
-                              const struct kf *from, double dt_s,
-                              struct kf *to)
+                                     const struct kf *from, double dt_s,
+                                     struct kf *to)
 {
     switch (kind->n * 10 + kind->levels) {
     case 22:
@@ -98,9 +103,8 @@ static inline bool predict_kinematic(const struct rig_kind *kind,
 
 /* W = Phi U and V = Qu, both upper triangular; below the diagonal nothing is
  * written or read. */
-UNROLLED void spread(const int n, const struct rig_kind *kind,
-                     const double *ud, const struct transition *t, double *W,
-                     double *V)
+UNROLLED void spread(const int n, const struct rig_kind *kind, const double *ud,
+                     const struct transition *t, double *W, double *V)
 {
     for (int k = 0; k < kind->n_blocks; k++) {
         int at = kind->block[k].at, end = at + kind->block[k].n;
@@ -110,7 +114,7 @@ UNROLLED void spread(const int n, const struct rig_kind *kind,
                 double sum = j < end ? Phi[j] : 0;
                 for (int c = i; c < end && c < j; c++)
                     sum += Phi[c] * ud[UD_AT(c, j)];
-                W[i * n + j] = sum;                  /* W = Phi U         */
+                W[i * n + j] = sum; /* W = Phi U         */
                 V[i * n + j] = j < end ? t->Qu[i * n + j] : 0;
             }
         }
@@ -129,7 +133,7 @@ static void move_free(const struct rig_kind *kind, struct kf_work *w,
                 double sum = 0;
                 for (int c = i; c < end; c++)
                     sum += w->Phi[i * n + c] * B[c];
-                B[i] = sum;                          /* B = Phi B         */
+                B[i] = sum; /* B = Phi B         */
             }
         }
     }

@@ -11,6 +11,11 @@
 #include "core/math/ud.h"
 
 #define UNROLLED static inline __attribute__((always_inline))
+#ifdef __clang__ /* unrolls loops of known bounds unasked */
+#define UD_UNROLL
+#else
+#define UD_UNROLL _Pragma("GCC unroll 6")
+#endif
 
 /* Calls `call(n)` with n as a constant where it is a usual size. */
 #define UD_FOR_N(n, call)                                                      \
@@ -44,13 +49,15 @@ UNROLLED double ud_look(const int n, const double *ud, const double *h,
 {
     double S = r;
     const double *col = ud;
+    UD_UNROLL
     for (int j = 0; j < n; j++) {
         double sum = h[j];
+        UD_UNROLL
         for (int i = 0; i < j; i++)
-            sum += col[i] * h[i];                /* f = U' h              */
+            sum += col[i] * h[i]; /* f = U' h              */
         f[j] = sum;
-        v[j] = col[j] * sum;                     /* v = D f               */
-        S += sum * v[j];                         /* S = r + f' D f        */
+        v[j] = col[j] * sum; /* v = D f               */
+        S += sum * v[j];     /* S = r + f' D f        */
         col += j + 1;
     }
     return S;
@@ -62,6 +69,7 @@ UNROLLED double ud_look_one(const int n, const double *ud, int state,
 {
     double S = r;
     const double *col = ud;
+    UD_UNROLL
     for (int j = 0; j < n; j++) {
         double u = 0;
         if (j > state)
@@ -83,14 +91,16 @@ UNROLLED void ud_correct(const int n, double *ud, const double *f,
 {
     double alpha = r, inverse = r > 0 ? 1 / r : 0;
     double *col = ud;
+    UD_UNROLL
     for (int j = 0; j < n; j++) {
         double was = alpha, lambda = -f[j] * inverse;
         alpha = was + f[j] * v[j];
         b[j] = v[j];
         if (alpha > was) {
             inverse = j == n - 1 ? over : 1 / alpha;
-            col[j] *= was * inverse;             /* D_j = D_j was / alpha */
+            col[j] *= was * inverse; /* D_j = D_j was / alpha */
         }
+        UD_UNROLL
         for (int i = 0; i < j; i++) {
             double u = col[i];
             col[i] = u + b[i] * lambda;
@@ -105,22 +115,27 @@ UNROLLED void ud_gather(const int n, const bool is_upper, double *W, double *V,
                         const double *D, const double *Qd, double *ud)
 {
     double c[UD_MAX], e[UD_MAX];
+    UD_UNROLL
     for (int j = n - 1; j >= 0; j--) {
         double *Wj = W + j * n, *Vj = V + j * n, *col = ud + UD_AT(0, j);
         double d = 0;
+        UD_UNROLL
         for (int l = is_upper ? j : 0; l < n; l++) {
             c[l] = D[l] * Wj[l];
             e[l] = Qd[l] * Vj[l];
-            d += c[l] * Wj[l] + e[l] * Vj[l];    /* D_j                   */
+            d += c[l] * Wj[l] + e[l] * Vj[l]; /* D_j                   */
         }
         col[j] = d;
         double inverse = d > UD_PIVOT_MIN ? 1 / d : 0;
+        UD_UNROLL
         for (int i = 0; i < j; i++) {
             double *Wi = W + i * n, *Vi = V + i * n, u = 0;
+            UD_UNROLL
             for (int l = is_upper ? j : 0; l < n; l++)
                 u += Wi[l] * c[l] + Vi[l] * e[l];
-            u *= inverse;                        /* U_ij                  */
+            u *= inverse; /* U_ij                  */
             col[i] = u;
+            UD_UNROLL
             for (int l = is_upper ? j : 0; l < n; l++) {
                 Wi[l] -= u * Wj[l];
                 Vi[l] -= u * Vj[l];

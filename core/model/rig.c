@@ -39,14 +39,6 @@ void rig_prepare(struct rig *rig)
         rig_prepare_kind(&rig->kind[i]);
 }
 
-/* Order of `name` against the NUL-terminated `entry`. */
-static int compare(const char *name, size_t len, const char *entry)
-{
-    size_t n = strlen(entry);
-    int order = memcmp(name, entry, len < n ? len : n);
-    return order != 0 ? order : (len > n) - (len < n);
-}
-
 int rig_find_sensor(const struct rig *rig, const char *name, size_t len)
 {
     int low = 0, high = rig->n_sensors - 1;
@@ -55,7 +47,7 @@ int rig_find_sensor(const struct rig *rig, const char *name, size_t len)
         int middle = (low + high) / 2;
         const struct rig_sensor *s = &rig->sensor[middle];
         int order = key != s->key ? (key < s->key ? -1 : 1)
-                                  : compare(name, len, s->name);
+                                  : rig_compare(name, len, s->name);
         if (order == 0)
             return middle;
         if (order < 0)

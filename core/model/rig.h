@@ -13,17 +13,18 @@
 #include <stdbool.h>
 #include <stddef.h>
 #include <stdint.h>
+#include <string.h>
 
 #include "core/math/ud.h"
 #include "core/model/block.h"
 #include "core/model/reads.h"
 
 enum {
-    RIG_ID_SIZE = 64,      /* an id of up to 63 characters and its NUL    */
+    RIG_ID_SIZE = 64, /* an id of up to 63 characters and its NUL    */
     RIG_UNIT_SIZE = 32,
     RIG_STATES_MAX = UD_MAX,
     RIG_BLOCKS_MAX = 24,
-    RIG_KINDS_MAX = 64,    /* tracks written in the file                  */
+    RIG_KINDS_MAX = 64, /* tracks written in the file                  */
     RIG_SENSORS_MAX = 256,
     RIG_SENDERS_MAX = 32
 };
@@ -31,29 +32,29 @@ enum {
 struct rig_state {
     char name[RIG_ID_SIZE];
     char unit[RIG_UNIT_SIZE];
-    bool is_constant;      /* belongs to a block without noise            */
-    bool has_prior;        /* a start was given, or it is stationary      */
+    bool is_constant; /* belongs to a block without noise            */
+    bool has_prior;   /* a start was given, or it is stationary      */
     double prior_mean, prior_u;
     double good_u, lost_u; /* limits on its u, 0 = none                   */
 };
 
 /* A track of the file: one id, or every id that starts with a prefix. */
 struct rig_kind {
-    char id[RIG_ID_SIZE];  /* without the '*' of a prefix                 */
-    int id_len;            /* by rig_prepare_kind                         */
+    char id[RIG_ID_SIZE]; /* without the '*' of a prefix                 */
+    int id_len;           /* by rig_prepare_kind                         */
     bool is_prefix;
-    int n_blocks, n;       /* n: states                                   */
-    int levels;            /* states per axis where all blocks are axes of
-                              one kinematic model, else 0; by
-                              rig_prepare_kind                            */
+    int n_blocks, n; /* n: states                                   */
+    int levels;      /* states per axis where all blocks are axes of
+                        one kinematic model, else 0; by
+                        rig_prepare_kind                            */
     struct block block[RIG_BLOCKS_MAX];
     struct rig_state state[RIG_STATES_MAX];
-    bool has_start_at;     /* start.at given: the prior belongs to that time */
+    bool has_start_at; /* start.at given: the prior belongs to that time */
     int64_t start_at_ns;
-    bool has_good;         /* any good.u given                            */
-    bool has_limits;       /* any good.u or lost.u, by rig_prepare_kind   */
-    int64_t lost_after_ns; /* coasting longer than this is lost           */
-    int recover_refused;   /* refused in a row ...                        */
+    bool has_good;          /* any good.u given                            */
+    bool has_limits;        /* any good.u or lost.u, by rig_prepare_kind   */
+    int64_t lost_after_ns;  /* coasting longer than this is lost           */
+    int recover_refused;    /* refused in a row ...                        */
     int64_t recover_for_ns; /* ... for at least so long: widen            */
 };
 
@@ -61,38 +62,38 @@ enum rig_stamp { RIG_STAMP_ANY, RIG_STAMP_SENSOR, RIG_STAMP_ARRIVAL };
 
 struct rig_sensor {
     char name[RIG_ID_SIZE];
-    uint64_t key;          /* of the name, by rig_prepare                 */
+    uint64_t key; /* of the name, by rig_prepare                 */
     char unit[READS_MAX][RIG_UNIT_SIZE];
-    int kind;              /* its track: index into rig.kind              */
+    int kind; /* its track: index into rig.kind              */
     struct reads reads;
     double scale[READS_MAX], shift[READS_MAX]; /* z -> unit of what it reads */
-    double r[READS_MAX];   /* variance of each component, that unit squared */
-    double rate_hz;        /* per track                                   */
+    double r[READS_MAX]; /* variance of each component, that unit squared */
+    double rate_hz;      /* per track                                   */
     int64_t silent_after_ns;
     bool has_gate;
-    double gate_p;         /* probability, 0 < p < 1                      */
+    double gate_p; /* probability, 0 < p < 1                      */
     double gate[READS_MAX + 1]; /* NIS limit by degrees of freedom, from
                                    gate_p by rig_prepare                  */
     enum rig_stamp stamp;
     int64_t delay_ns;
 };
 
-struct rig_network {       /* receive.senders                             */
-    uint8_t family;        /* 4 or 6                                      */
+struct rig_network { /* receive.senders                             */
+    uint8_t family;  /* 4 or 6                                      */
     uint8_t bits;
     uint8_t address[16];
 };
 
 struct rig {
     char name[128];
-    char file_hash[65];    /* SHA-256 of the file's bytes, hex            */
+    char file_hash[65]; /* SHA-256 of the file's bytes, hex            */
     int64_t hold_ns, horizon_ns, ahead_ns;
-    int max_tracks;        /* limits.tracks                               */
+    int max_tracks;         /* limits.tracks                               */
     int max_ids_per_sender; /* limits.ids_per_sender                      */
-    double max_steps;      /* limits.steps: re-run steps per sensor and
-                              second                                      */
-    int max_pending;       /* limits.pending per sensor and track, 0 = the
-                              default 4 rate (horizon + ahead) + 16       */
+    double max_steps;       /* limits.steps: re-run steps per sensor and
+                               second                                      */
+    int max_pending;        /* limits.pending per sensor and track, 0 = the
+                               default 4 rate (horizon + ahead) + 16       */
     int n_kinds, n_sensors, n_senders;
     struct rig_kind kind[RIG_KINDS_MAX];
     struct rig_sensor sensor[RIG_SENSORS_MAX];
@@ -102,10 +103,31 @@ struct rig {
 /* The first eight bytes of a text as a number that sorts as they do. */
 static inline uint64_t rig_key(const char *s, size_t len)
 {
-    uint64_t key = 0;
-    for (size_t i = 0; i < 8 && i < len; i++)
-        key |= (uint64_t)(uint8_t)s[i] << (56 - 8 * i);
-    return key;
+    uint64_t first8 = 0;
+    uint32_t first4 = 0, last4 = 0;
+    if (len >= 8) {
+        memcpy(&first8, s, 8);
+        return __builtin_bswap64(first8);
+    }
+    if (len >= 4) { /* two loads that overlap */
+        memcpy(&first4, s, 4);
+        memcpy(&last4, s + len - 4, 4);
+        return (uint64_t)__builtin_bswap32(first4) << 32 |
+               (uint64_t)__builtin_bswap32(last4) << (64 - 8 * len);
+    }
+    for (size_t i = 0; i < len; i++)
+        first8 |= (uint64_t)(uint8_t)s[i] << (56 - 8 * i);
+    return first8;
+}
+
+/* Order of an id against an entry, NUL-terminated, whose key is the same. */
+static inline int rig_compare(const char *id, size_t len, const char *entry)
+{
+    if (len < 8)
+        return 0; /* the key holds all of it, and where it ends */
+    size_t n = strlen(entry);
+    int order = memcmp(id, entry, len < n ? len : n);
+    return order != 0 ? order : (len > n) - (len < n);
 }
 
 /* Fills what follows from the rest: gate limits from gate_p, keys, lengths.

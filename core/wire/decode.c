@@ -56,9 +56,9 @@ enum datagram_outcome wire_decode(struct wire_decoder *d, const uint8_t *bytes,
     d->n = d->n_bad = d->at = d->scratch_used = 0;
     d->reason = NULL;
     while (len > 0 &&
+           bytes[0] < 0x80 && /* MessagePack may end in such a byte */
            (bytes[len - 1] == 0 || bytes[len - 1] == '\n' ||
-            bytes[len - 1] == '\r') &&
-           (bytes[0] < 0x80)) /* MessagePack may end in such a byte */
+            bytes[len - 1] == '\r'))
         len--;
     if (len == 0) {
         d->reason = "the datagram is empty: send a map or an object";

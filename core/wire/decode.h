@@ -18,23 +18,26 @@
 #include <stddef.h>
 
 #include "core/model/message.h"
+#include "core/wire/pattern.h"
 
 enum {
     WIRE_VERSION = 1,
     WIRE_ELEMENTS_MAX = 1024, /* elements of one datagram                 */
     WIRE_DEPTH_MAX = 8,
-    WIRE_SCRATCH_SIZE = 4096  /* unescaped texts of one datagram          */
+    WIRE_SCRATCH_SIZE = 4096 /* unescaped texts of one datagram          */
 };
 
+/* All zero before the first call. */
 struct wire_decoder {
-    int n;                    /* good elements                            */
-    int n_bad;                /* bad elements of an array                 */
-    const char *reason;       /* why the datagram or the first bad element
-                                 was refused, with the remedy; NULL if none */
-    int at;                   /* byte offset that the reason belongs to   */
+    int n;              /* good elements                            */
+    int n_bad;          /* bad elements of an array                 */
+    const char *reason; /* why the datagram or the first bad element
+                           was refused, with the remedy; NULL if none */
+    int at;             /* byte offset that the reason belongs to   */
     struct measurement element[WIRE_ELEMENTS_MAX + 1]; /* one to work on  */
     char scratch[WIRE_SCRATCH_SIZE];
     int scratch_used;
+    struct pattern pattern[PATTERNS]; /* of MessagePack datagrams before   */
 };
 
 /* DATAGRAM_DECODED when at least one element is good; DATAGRAM_MALFORMED or

@@ -9,6 +9,7 @@
 struct cursor {
     const uint8_t *begin, *at, *end;
     const char *broken; /* first reason, NULL while all is well            */
+    struct pattern *pattern; /* learns the one map; NULL in a list         */
 };
 
 static const char truncated[] =
@@ -26,6 +27,11 @@ static bool fail(struct cursor *c, const char *reason)
 static inline size_t left(const struct cursor *c)
 {
     return (size_t)(c->end - c->at);
+}
+
+static inline size_t whole(const struct cursor *c)
+{
+    return (size_t)(c->end - c->begin);
 }
 
 /* An unsigned number of 1, 2, 4 or 8 bytes that are there. */
@@ -49,7 +55,8 @@ static inline uint64_t big_endian(const uint8_t *p, int n)
     }
 }
 
-/* --- what a first byte opens ------------------------------------------------ */
+/* --- what a first byte opens ------------------------------------------------
+ */
 
 enum opened_kind {
     OPENED_VALUE, /* complete in itself                                    */
@@ -202,7 +209,8 @@ static inline bool take(struct cursor *c, struct value *v, struct opened *o)
     return take_sized(c, first, v, o);
 }
 
-/* --- what nobody reads ------------------------------------------------------ */
+/* --- what nobody reads ------------------------------------------------------
+ */
 
 /* The children of a list or map that stands at this depth. */
 static bool skip_inside(struct cursor *c, const struct opened *o, int depth)
@@ -222,7 +230,8 @@ static bool skip_inside(struct cursor *c, const struct opened *o, int depth)
     return true;
 }
 
-/* --- elements --------------------------------------------------------------- */
+/* --- elements ---------------------------------------------------------------
+ */
 
 /* A list of numbers and nulls; anything else in it makes it OTHER. */
 static bool take_list(struct cursor *c, uint64_t n, int depth, struct value *v)
@@ -252,8 +261,7 @@ static bool take_list(struct cursor *c, uint64_t n, int depth, struct value *v)
 }
 
 /* A map at this depth: its keys and values into the element. */
-static bool take_map(struct cursor *c, uint64_t n, int depth,
-                     struct element *e)
+static bool take_map(struct cursor *c, uint64_t n, int depth, struct element *e)
 {
     for (uint64_t i = 0; i < n; i++) {
         struct value key, v;
@@ -263,6 +271,7 @@ static bool take_map(struct cursor *c, uint64_t n, int depth,
             return false;
         if (o.kind != OPENED_VALUE)
             return fail(c, "a key of a map is a list or a map: send strings");
+        const uint8_t *from = c->at;
         if (!take(c, &v, &o))
             return false;
         if (o.kind == OPENED_LIST && !take_list(c, o.n, depth + 1, &v))
@@ -275,7 +284,11 @@ static bool take_map(struct cursor *c, uint64_t n, int depth,
         if (key.kind != VALUE_TEXT)
             continue;
         e->here = (int)(here - c->begin);
-        element_set(e, element_key(key.text.at, (size_t)key.text.len), &v);
+        enum element_key k = element_key(key.text.at, (size_t)key.text.len);
+        element_set(e, k, &v);
+        if (c->pattern)
+            pattern_note(c->pattern, k, &v, c->begin, (size_t)(from - c->begin),
+                         (size_t)(c->at - c->begin));
     }
     return true;
 }
@@ -291,9 +304,13 @@ static bool take_elements(struct cursor *c, struct wire_decoder *d,
         return false;
     if (outer.kind == OPENED_MAP) {
         decode_begin(d, &e);
+        c->pattern = &d->pattern[whole(c) % PATTERNS];
+        pattern_begin(c->pattern, c->begin, whole(c));
         if (!take_map(c, outer.n, 0, &e))
             return false;
         decode_take(d, &e, is_wrong_version);
+        if (d->n == 1 && c->at == c->end)
+            pattern_end(c->pattern, whole(c));
         return true;
     }
     if (outer.kind != OPENED_LIST)
@@ -305,9 +322,9 @@ static bool take_elements(struct cursor *c, struct wire_decoder *d,
             return false;
         if (o.kind != OPENED_MAP)
             element_wrong(&e, "an element of the list is no map: send maps");
-        if (o.kind == OPENED_MAP ? !take_map(c, o.n, 1, &e)
-                                 : o.kind == OPENED_LIST &&
-                                       !skip_inside(c, &o, 1))
+        if (o.kind == OPENED_MAP
+                ? !take_map(c, o.n, 1, &e)
+                : o.kind == OPENED_LIST && !skip_inside(c, &o, 1))
             return false;
         decode_take(d, &e, is_wrong_version);
     }
@@ -317,7 +334,12 @@ static bool take_elements(struct cursor *c, struct wire_decoder *d,
 const char *decode_msgpack(struct wire_decoder *d, const uint8_t *bytes,
                            size_t len, bool *is_wrong_version)
 {
-    struct cursor c = {bytes, bytes, bytes + len, NULL};
+    struct cursor c = {bytes, bytes, bytes + len, NULL, NULL};
+    struct pattern *p = &d->pattern[len % PATTERNS];
+    if (pattern_read(p, bytes, len, &d->element[0])) {
+        d->n = 1;
+        return NULL;
+    }
     if (!take_elements(&c, d, is_wrong_version)) {
         d->at = (int)(c.at - bytes);
         return c.broken;

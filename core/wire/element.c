@@ -14,7 +14,10 @@ void element_begin(struct element *e, struct measurement *m)
     /* Not z and u, which are long; memset would cost more than these. */
     const struct text none = {NULL, 0};
     e->m = m;
-    m->sensor = m->track = m->name = m->note = none;
+    m->sensor = none;
+    m->track = none;
+    m->name = none;
+    m->note = none;
     m->mark = MARK_NONE;
     m->has_t = m->has_seq = m->has_cov = false;
     m->t_ns = 0;
@@ -113,12 +116,18 @@ static int64_t seconds_to_ns(double s)
     return s < 0 ? -(int64_t)ns : (int64_t)ns;
 }
 
+bool element_seconds(double s, int64_t *t_ns)
+{
+    if (!(real_abs(s) < seconds_max))
+        return false;
+    *t_ns = seconds_to_ns(s);
+    return true;
+}
+
 static bool set_seconds(struct element *e, double s)
 {
-    if (real_abs(s) < seconds_max) {
-        e->m->t_ns = seconds_to_ns(s);
+    if (element_seconds(s, &e->m->t_ns))
         return true;
-    }
     if (!real_is_finite(s))
         element_wrong(e, "t is NaN or infinite: send seconds since 1970 UTC, "
                          "or leave t out");

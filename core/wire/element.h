@@ -54,11 +54,11 @@ struct value {
 };
 
 struct element {
-    struct measurement *m;   /* where it is put together                   */
-    uint32_t seen;           /* bit per key                                */
+    struct measurement *m; /* where it is put together                   */
+    uint32_t seen;         /* bit per key                                */
     bool is_wrong_version;
-    const char *reason;      /* NULL while all is well                     */
-    int here, at;            /* byte offset of the key in work, of reason  */
+    const char *reason; /* NULL while all is well                     */
+    int here, at;       /* byte offset of the key in work, of reason  */
 };
 
 void element_begin(struct element *e, struct measurement *m);
@@ -66,13 +66,15 @@ void element_begin(struct element *e, struct measurement *m);
 /* Says that the element is wrong; only the first reason is kept. */
 void element_wrong(struct element *e, const char *reason);
 
-
 /* ELEMENT_OTHER is ignored with all that it holds. */
 enum element_key element_key(const char *at, size_t len);
 void element_set(struct element *e, enum element_key k, const struct value *v);
 
 /* Checks the whole; false with e->reason when it is no measurement. */
 bool element_end(struct element *e);
+
+/* Seconds since 1970 to the nearest ns; false where that is no stamp. */
+bool element_seconds(double s, int64_t *t_ns);
 
 /* The value as a number, NaN for null; false for anything else. */
 bool value_number(const struct value *v, double *number);

@@ -179,8 +179,7 @@ static double side_by_side(const struct size *size)
     }
     for (int k = 0; k < TRACKS; k++)
         free(ours.f[k]);
-    double ideal_ns = bench_median(a, ROUNDS),
-           ours_ns = bench_median(b, ROUNDS);
+    double ideal_ns = bench_least(a, ROUNDS), ours_ns = bench_least(b, ROUNDS);
     printf("n %2d m %d: ideal %7.1f ns, ours %7.1f ns, ratio %.2f\n",
            size->axes * size->levels, size->axes, ideal_ns, ours_ns,
            ours_ns / ideal_ns);
@@ -190,7 +189,7 @@ static double side_by_side(const struct size *size)
 int main(void)
 {
     double worst = 0, limit = LIMIT_TENTHS / 10.0;
-    printf("ns per step (predict and update, dt varying), median of %d\n",
+    printf("ns per step (predict and update, dt varying), least of %d\n",
            ROUNDS);
     for (int i = 0; i < N_SIZES; i++) {
         double ratio = side_by_side(&sizes[i]);

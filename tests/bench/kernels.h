@@ -134,9 +134,9 @@ INLINE void NAME(update)(const int at, struct NAME(state) * s, double z,
 }
 
 /* A call, as ours is one: nothing is carried over from step to step. */
-static __attribute__((noinline)) void NAME(step)(struct NAME(state) * s,
-                                                 const double *z, double r,
-                                                 double q, double T)
+static __attribute__((noipa)) void NAME(step)(struct NAME(state) * s,
+                                              const double *z, double r,
+                                              double q, double T)
 {
     NAME(predict)(s, q, T);
     UNROLL
