@@ -7,6 +7,7 @@
 #include <string.h>
 
 #include "daemon/log.h"
+#include "daemon/pages.h"
 
 #define SECOND_NS 1000000000
 
@@ -14,7 +15,7 @@
  * of another processor may lie a little back. */
 #define EMPTY_MARGIN_NS 5000000
 
-enum { LOOK_MS = 10, RUN_ALIGN = 64 };
+enum { LOOK_MS = 10 };
 
 struct ingest {
     const struct settings *settings;
@@ -154,8 +155,8 @@ static void on_timer(uv_timer_t *timer)
 static status build_run(struct ingest *in, struct err *err)
 {
     const struct rig *rig = &in->settings->rig;
-    size_t bytes = (run_bytes(rig) + RUN_ALIGN - 1) / RUN_ALIGN * RUN_ALIGN;
-    in->memory = aligned_alloc(RUN_ALIGN, bytes);
+    size_t bytes = run_bytes(rig);
+    in->memory = pages_new(bytes);
     if (!in->memory)
         return err_set(err, ST_NOMEM,
                        "%zu bytes for the run are not to be had; lower limits "

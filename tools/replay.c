@@ -3,15 +3,14 @@
 
 #include <stdlib.h>
 
-enum { REPLAY_ALIGN = 64 };
+#include "daemon/pages.h"
 
 status replay_init(struct replay *r, const struct rig *rig, int port,
                    struct message_sink sink)
 {
-    size_t bytes =
-        (run_bytes(rig) + REPLAY_ALIGN - 1) / REPLAY_ALIGN * REPLAY_ALIGN;
+    size_t bytes = run_bytes(rig);
     *r = (struct replay){.rig = rig, .port = port, .sink = sink};
-    r->memory = aligned_alloc(REPLAY_ALIGN, bytes);
+    r->memory = pages_new(bytes);
     if (r->memory == NULL)
         return ST_NOMEM;
     r->run = run_init(r->memory, bytes, rig, sink);

@@ -4,6 +4,8 @@
 #include <stdbool.h>
 #include <string.h>
 
+#include "core/model/rig.h"
+
 void due_init(struct due *d, int n)
 {
     d->n = n;
@@ -17,6 +19,8 @@ static bool is_before(const struct due *d, int32_t a, int32_t b)
 {
     if (d->time[a] != d->time[b] || d->time[a] == DUE_NEVER)
         return d->time[a] < d->time[b];
+    if (d->key[a] != d->key[b])
+        return d->key[a] < d->key[b];
     return strcmp(d->id[a], d->id[b]) < 0;
 }
 
@@ -39,7 +43,8 @@ static void down(struct due *d, int i, int32_t place)
 {
     for (;;) {
         int child = 2 * i + 1;
-        if (child + 1 < d->n && is_before(d, d->heap[child + 1], d->heap[child]))
+        if (child + 1 < d->n &&
+            is_before(d, d->heap[child + 1], d->heap[child]))
             child++;
         if (child >= d->n || !is_before(d, d->heap[child], place))
             break;
@@ -55,6 +60,8 @@ void due_set(struct due *d, int place, int64_t time_ns)
     if (was == time_ns)
         return;
     d->time[place] = time_ns;
+    if (was == DUE_NEVER)
+        d->key[place] = rig_key(d->id[place], strlen(d->id[place]));
     if (time_ns < was)
         up(d, d->at[place], place);
     else

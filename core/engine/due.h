@@ -18,6 +18,7 @@ struct due {
     int32_t *at;     /* by place: its position in the heap                */
     int64_t *time;   /* by place: when it is due                          */
     const char **id; /* by place: the track's id, for equal times         */
+    uint64_t *key;   /* by place: the id's rig_key                        */
 };
 
 /* All n places, never due.  The arrays hold n values each; the caller fills

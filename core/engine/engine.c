@@ -41,6 +41,7 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->due.heap = arena_take(arena, places * sizeof *e->due.heap);
     e->due.at = arena_take(arena, places * sizeof *e->due.at);
     e->due.id = arena_take(arena, places * sizeof *e->due.id);
+    e->due.key = arena_take(arena, places * sizeof *e->due.key);
     e->due.time = arena_take(arena, places * sizeof *e->due.time);
 }
 

@@ -15,12 +15,13 @@ enum { SEQ_JUMP_MAX = 100000 };
 
 static const double z_max = 1e150;
 
-/* --- who is meant ----------------------------------------------------------- */
+/* --- who is meant -----------------------------------------------------------
+ */
 
 struct door {
     int sensor, kind;
-    struct text id;         /* of the track                                */
-    struct track *track;    /* NULL: not there yet                         */
+    struct text id;      /* of the track                                */
+    struct track *track; /* NULL: not there yet                         */
     int64_t t_ns;
 };
 
@@ -45,7 +46,8 @@ static void address(const struct engine *e, const struct measurement *m,
         d->track = roster_find(&e->roster, d->id.at, (size_t)d->id.len);
 }
 
-/* --- refusals that look at the measurement alone ---------------------------- */
+/* --- refusals that look at the measurement alone ----------------------------
+ */
 
 static enum outcome refuse(struct engine *e, enum outcome o, const char *why)
 {
@@ -120,7 +122,8 @@ static enum outcome examine(struct engine *e, const struct measurement *m,
     return OUTCOME_PENDING;
 }
 
-/* --- seq -------------------------------------------------------------------- */
+/* --- seq --------------------------------------------------------------------
+ */
 
 /* True if this number was seen before. */
 static bool seq_seen(struct engine *e, int sensor, uint64_t seq)
@@ -128,9 +131,9 @@ static bool seq_seen(struct engine *e, int sensor, uint64_t seq)
     struct seq_window *w = &e->seq[sensor];
     uint64_t *lost = &e->counts->sensor[sensor].tally[TALLY_LOST];
     uint64_t *total = &e->counts->total.tally[TALLY_LOST];
-    bool is_far = w->has_any && (seq > w->greatest
-                                     ? seq - w->greatest > SEQ_JUMP_MAX
-                                     : w->greatest - seq > SEQ_JUMP_MAX);
+    bool is_far =
+        w->has_any && (seq > w->greatest ? seq - w->greatest > SEQ_JUMP_MAX
+                                         : w->greatest - seq > SEQ_JUMP_MAX);
     if (!w->has_any || is_far) {
         *w = (struct seq_window){true, seq, 1};
         return false;
@@ -156,7 +159,8 @@ static bool seq_seen(struct engine *e, int sensor, uint64_t seq)
     return false;
 }
 
-/* --- taking in -------------------------------------------------------------- */
+/* --- taking in --------------------------------------------------------------
+ */
 
 static double plain(double z)
 {
@@ -231,8 +235,8 @@ static enum outcome place(struct engine *e, const struct measurement *m,
                           struct door *d, const struct sender *from)
 {
     const struct rig_sensor *sensor = &e->rig->sensor[d->sensor];
-    bool is_duplicate = false, is_by_arrival =
-        !m->has_t || sensor->stamp == RIG_STAMP_ARRIVAL;
+    bool is_duplicate = false,
+         is_by_arrival = !m->has_t || sensor->stamp == RIG_STAMP_ARRIVAL;
     int n_read = fill(e, m, d, m_max_of(e, d)), i = 0;
     if (d->track)
         i = track_find(d->track, e->incoming, &is_duplicate);
@@ -309,8 +313,8 @@ void engine_take(struct engine *e, const struct measurement *m,
     }
     struct door d;
     address(e, m, &d);
-    bool is_again = d.sensor >= 0 && m->has_seq &&
-                    seq_seen(e, d.sensor, m->seq);
+    bool is_again =
+        d.sensor >= 0 && m->has_seq && seq_seen(e, d.sensor, m->seq);
     enum outcome o = examine(e, m, &d);
     if (o == OUTCOME_PENDING)
         o = place(e, m, &d, from);
@@ -330,7 +334,20 @@ void engine_take(struct engine *e, const struct measurement *m,
         taken(e, d.track, d.sensor, d.t_ns);
 }
 
-/* --- when tracks move on ---------------------------------------------------- */
+/* --- when tracks move on ----------------------------------------------------
+ */
+
+/* What settles next was laid a horizon ago and has left the processor's cache:
+ * asked for now, it is there when it is due. */
+static void fetch(const struct track *t, int next)
+{
+    enum { LINE = 64, STEPS = 3 };
+    for (int i = next; i < next + STEPS && i < t->n; i++) {
+        const char *step = (const char *)track_step(t, i);
+        for (size_t at = 0; at < t->step_bytes; at += LINE)
+            __builtin_prefetch(step + at);
+    }
+}
 
 void intake_schedule(struct engine *e, struct track *t)
 {
@@ -347,6 +364,7 @@ void intake_schedule(struct engine *e, struct track *t)
         int next = track_next_settled(t);
         if (next >= 0) {
             int64_t settle = track_step(t, next)->t_ns + e->rig->horizon_ns + 1;
+            fetch(t, next);
             due = settle < due ? settle : due;
         }
     }

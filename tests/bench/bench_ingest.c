@@ -4,9 +4,8 @@
  *
  * Both get the same datagrams at the same pace: bursts of 1024 at most, each
  * only when the kernel shows the receiver's socket queue empty, so nothing is
- * lost.  All run on one core and the receivers do not preempt the sender
- * (SCHED_BATCH): a burst waits as a whole, as under load, and a slow sender
- * does not turn the bench into one of wake-ups.
+ * lost.  The sender has one core, the receivers (all threads of the daemon)
+ * the other.
  *
  * Judged: a sender that merges 64 into one send (UDP_SEGMENT), so that it is
  * never the bottleneck, against a sink that takes single datagrams.  Printed
@@ -53,20 +52,19 @@ struct receiver {
     clockid_t cpu;
 };
 
-static void pin(void)
+static void pin(size_t core)
 {
     cpu_set_t set;
     CPU_ZERO(&set);
-    CPU_SET((size_t)sched_getcpu(), &set);
-    BENCH_NEEDS(sched_setaffinity(0, sizeof set, &set) == 0, "one core");
+    CPU_SET(core, &set);
+    BENCH_NEEDS(sched_setaffinity(0, sizeof set, &set) == 0, "two cores");
 }
 
-/* In a receiver's process: it ends with the bench and waits its turn. */
+/* In a receiver's process: it ends with the bench. */
 static void give_way(void)
 {
-    struct sched_param none = {0};
     prctl(PR_SET_PDEATHSIG, SIGTERM);
-    sched_setscheduler(0, SCHED_BATCH, &none);
+    pin(1);
 }
 
 static void adopt(struct receiver *r)
@@ -200,8 +198,8 @@ static void sender_fill(struct sender_state *s)
     int64_t now_ns = bench_clock_ns(CLOCK_REALTIME);
     for (int i = 0; i < BATCH; i++, s->seq++) {
         uint8_t *at = s->bytes + (size_t)i * s->len;
-        s->len = bench_datagram(at, (int)(s->seq % TRACKS), now_ns, s->seq,
-                                1 + 0.01 * (s->seq % 7), 2);
+        s->len = bench_datagram(at, (int)(s->seq % TRACKS), now_ns + 10 * i,
+                                s->seq, 1 + 0.01 * (s->seq % 7), 2);
         s->piece[i] = (struct iovec){at, s->len};
     }
 }
@@ -394,7 +392,7 @@ int main(int argc, char **argv)
     struct receiver sink, merging, daemon;
     BENCH_NEEDS(mkdtemp(folder) != NULL, folder);
     atexit(clean);
-    pin();
+    pin(0);
     daemon_start(&daemon, program);
     sink_start(&sink, false);
     sink_start(&merging, true);
