@@ -31,8 +31,10 @@ static void duplicate(void *ctx, size_t at, const char *name)
 {
     struct loading *l = ctx;
     cJSON place = {.valueint = (int)at};
-    loading_error(l, &place, "\"%.64s\" stands twice in this object; remove "
-                  "one", name);
+    loading_error(l, &place,
+                  "\"%.64s\" stands twice in this object; remove "
+                  "one",
+                  name);
 }
 
 /* Text to tree; false when that failed or a key stands twice. */
@@ -42,13 +44,15 @@ static bool parse_tree(struct loading *l)
     const char *what;
     long bad = textpos_bad_utf8(l->text, l->len);
     if (bad >= 0) {
-        syntax_error(l, (size_t)bad, "this byte is not UTF-8 text; save the "
+        syntax_error(l, (size_t)bad,
+                     "this byte is not UTF-8 text; save the "
                      "file as UTF-8");
         return false;
     }
     bad = textpos_strip(l->text, l->len);
     if (bad >= 0) {
-        syntax_error(l, (size_t)bad, "this comment does not end; close it "
+        syntax_error(l, (size_t)bad,
+                     "this comment does not end; close it "
                      "with */");
         return false;
     }
@@ -106,13 +110,15 @@ static char *copy_bytes(const char *text, size_t len)
     return copy;
 }
 
-status settings_parse(struct settings **out, const char *path,
-                      const char *text, size_t len,
-                      const struct settings_change *changes, int n_changes,
-                      struct problems *problems)
+status settings_parse(struct settings **out, const char *path, const char *text,
+                      size_t len, const struct settings_change *changes,
+                      int n_changes, struct problems *problems)
 {
-    struct loading l = {.path = path, .problems = problems, .raw = text,
-                        .len = len, .changes = changes,
+    struct loading l = {.path = path,
+                        .problems = problems,
+                        .raw = text,
+                        .len = len,
+                        .changes = changes,
                         .n_changes = n_changes};
     struct err err;
     int n = problems->n;

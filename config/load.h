@@ -22,18 +22,18 @@ enum settings_sync { SYNC_NONE, SYNC_EVERY_SECOND, SYNC_ALWAYS };
 /* What the daemon needs beside the rig. */
 struct settings {
     struct rig rig;
-    char path[SETTINGS_PATH_SIZE];    /* of the rig file                  */
-    char folder[SETTINGS_PATH_SIZE];  /* capture.folder, absolute, beside the
-                                         rig file unless absolute itself;
-                                         "" = no capture                  */
-    char udp[SETTINGS_ADDRESS_SIZE];  /* receive.udp, "127.0.0.1:8410"    */
-    char tcp[SETTINGS_ADDRESS_SIZE];  /* serve.tcp                        */
-    int64_t udp_buffer_bytes;         /* receive.buffer                   */
+    char path[SETTINGS_PATH_SIZE];   /* of the rig file                  */
+    char folder[SETTINGS_PATH_SIZE]; /* capture.folder, absolute, beside the
+                                        rig file unless absolute itself;
+                                        "" = no capture                  */
+    char udp[SETTINGS_ADDRESS_SIZE]; /* receive.udp, "127.0.0.1:8410"    */
+    char tcp[SETTINGS_ADDRESS_SIZE]; /* serve.tcp                        */
+    int64_t udp_buffer_bytes;        /* receive.buffer                   */
     int64_t segment_bytes, segment_every_ns, floor_bytes;
     enum settings_sync sync;
     int64_t clock_wait_ns;
     int max_subscribers;
-    char *text;                       /* the file's bytes, owned          */
+    char *text; /* the file's bytes, owned          */
     size_t text_len;
 };
 

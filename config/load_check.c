@@ -77,8 +77,10 @@ static void check_choice(struct loading *l, const cJSON *node,
                          const struct table_row *row)
 {
     if (is_planned_choice(row, node->valuestring))
-        loading_error(l, node, "\"%s\" is planned but not built yet; use "
-                      "another %s", node->valuestring, table_key(row));
+        loading_error(l, node,
+                      "\"%s\" is planned but not built yet; use "
+                      "another %s",
+                      node->valuestring, table_key(row));
     else if (!is_choice(row->of, node->valuestring))
         unknown_choice(l, node, row);
 }
@@ -108,8 +110,7 @@ static bool has_type(const cJSON *node, const struct table_row *row)
 static void check_value(struct loading *l, const cJSON *node,
                         const struct table_row *row, const char *key);
 
-static void check_keys(struct loading *l, const cJSON *object,
-                       const char *path)
+static void check_keys(struct loading *l, const cJSON *object, const char *path)
 {
     const cJSON *node;
     cJSON_ArrayForEach(node, object)
@@ -118,8 +119,10 @@ static void check_keys(struct loading *l, const cJSON *object,
         if (row == NULL)
             unknown_key(l, node, path);
         else if (row->is_planned)
-            loading_error_key(l, node, "\"%s\" is planned but not built yet; "
-                              "remove it", node->string);
+            loading_error_key(l, node,
+                              "\"%s\" is planned but not built yet; "
+                              "remove it",
+                              node->string);
         else
             check_value(l, node, row, node->string);
     }
@@ -142,8 +145,9 @@ static void check_value(struct loading *l, const cJSON *node,
 {
     const cJSON *each;
     if (row->is_list && cJSON_IsArray(node)) {
-        const struct table_row one = {row->path, row->value, false, false,
-                                      row->of, row->default_text, row->help};
+        const struct table_row one = {row->path, row->value, false,
+                                      false,     row->of,    row->default_text,
+                                      row->help};
         if (node->child == NULL)
             loading_error(l, node, "\"%.64s\" is an empty list; give a value",
                           key);
@@ -151,8 +155,10 @@ static void check_value(struct loading *l, const cJSON *node,
         return;
     }
     if (is_planned_form(node, row)) {
-        loading_error(l, node, "\"%.64s\" as an object is planned but not "
-                      "built yet; give one value", key);
+        loading_error(l, node,
+                      "\"%.64s\" as an object is planned but not "
+                      "built yet; give one value",
+                      key);
         return;
     }
     if (!has_type(node, row)) {

@@ -14,8 +14,10 @@ static bool copy_text(struct loading *l, const cJSON *node, char *out,
 {
     const char *text = loading_text(node);
     if (strlen(text) >= size) {
-        loading_error(l, node, "\"%.64s\" is longer than %zu bytes; shorten "
-                      "it", node->string, size - 1);
+        loading_error(l, node,
+                      "\"%.64s\" is longer than %zu bytes; shorten "
+                      "it",
+                      node->string, size - 1);
         return false;
     }
     memcpy(out, text, strlen(text) + 1);
@@ -31,9 +33,11 @@ static void address(struct loading *l, const cJSON *node, char *out)
     const char *port = strrchr(out, ':');
     size_t digits = port == NULL ? 0 : strspn(port + 1, "0123456789");
     if (port == NULL || port == out || digits == 0 || digits > 5 ||
-        port[1 + digits] != '\0' || atol(port + 1) > 65535)
-        loading_error(l, node, "\"%s\" is not an address with a port; write "
-                      "it like \"127.0.0.1:8410\"", out);
+        port[1 + digits] != '\0' || strtol(port + 1, NULL, 10) > 65535)
+        loading_error(l, node,
+                      "\"%s\" is not an address with a port; write "
+                      "it like \"127.0.0.1:8410\"",
+                      out);
 }
 
 /* "10.0.0.0/8" or a single address. */
@@ -55,8 +59,8 @@ static bool network(const char *text, struct rig_network *out)
         if (end == slash + 1 || *end != '\0' || bits > most)
             return false;
     }
-    *out = (struct rig_network){.family = is_six ? 6 : 4,
-                                .bits = (uint8_t)bits};
+    *out =
+        (struct rig_network){.family = is_six ? 6 : 4, .bits = (uint8_t)bits};
     if (inet_pton(is_six ? AF_INET6 : AF_INET, host, out->address) != 1)
         return false;
     for (unsigned long i = bits; i < most; i++)
@@ -73,14 +77,17 @@ static void senders(struct loading *l, const cJSON *node)
         if (!cJSON_IsString(each))
             continue;
         if (rig->n_senders == RIG_SENDERS_MAX) {
-            loading_error(l, each, "more than %d senders; join them into "
-                          "networks", RIG_SENDERS_MAX);
+            loading_error(l, each,
+                          "more than %d senders; join them into "
+                          "networks",
+                          RIG_SENDERS_MAX);
             return;
         }
         if (network(each->valuestring, &rig->sender[rig->n_senders]))
             rig->n_senders++;
         else
-            loading_error(l, each, "\"%.64s\" is not a network; write it like "
+            loading_error(l, each,
+                          "\"%.64s\" is not a network; write it like "
                           "\"127.0.0.0/8\", with zeros behind the mask",
                           each->valuestring);
     }
@@ -103,7 +110,8 @@ static void folder(struct loading *l, const cJSON *node)
         n = snprintf(path, sizeof path, "%s/%.*s%s%s", here, beside, l->path,
                      slash == NULL ? "" : "/", name);
     if (n < 0 || n >= SETTINGS_PATH_SIZE) {
-        loading_error(l, node, "the path of the folder is too long; give a "
+        loading_error(l, node,
+                      "the path of the folder is too long; give a "
                       "shorter one");
         return;
     }
@@ -116,7 +124,8 @@ static void capture(struct loading *l, const cJSON *object)
     const cJSON *sync = loading_get(object, "sync");
     folder(l, loading_get(object, "folder"));
     if (cJSON_IsObject(object) && loading_get(object, "folder") == NULL)
-        loading_error_key(l, object, "\"capture\" has no folder; give "
+        loading_error_key(l, object,
+                          "\"capture\" has no folder; give "
                           "\"folder\": \"captures\", or remove it");
     loading_bytes(l, object, "capture.segment", &s->segment_bytes);
     loading_bytes(l, object, "capture.floor", &s->floor_bytes);
@@ -130,7 +139,8 @@ static void capture(struct loading *l, const cJSON *object)
         return;
     const cJSON *segment = loading_get(object, "segment");
     if (segment != NULL && s->segment_bytes > 0)
-        loading_error(l, segment, "\"segment\" must be at least 64 KiB; make "
+        loading_error(l, segment,
+                      "\"segment\" must be at least 64 KiB; make "
                       "it larger");
 }
 
@@ -146,7 +156,8 @@ static void delays(struct loading *l)
         if (node == NULL || i < 0 || rig->sensor[i].delay_ns == 0 ||
             rig->sensor[i].delay_ns < rig->horizon_ns)
             continue;
-        loading_error(l, node, "a delay of %g ms reaches the horizon of %g "
+        loading_error(l, node,
+                      "a delay of %g ms reaches the horizon of %g "
                       "ms: all would be too late; make order.horizon longer",
                       (double)rig->sensor[i].delay_ns * 1e-6,
                       (double)rig->horizon_ns * 1e-6);
@@ -157,15 +168,16 @@ static void order(struct loading *l, const cJSON *object)
 {
     struct rig *rig = &l->s->rig;
     bool is_ok = loading_time(l, object, "order.hold", 0, &rig->hold_ns);
-    is_ok = loading_time(l, object, "order.horizon", 0, &rig->horizon_ns) &&
-            is_ok;
+    is_ok =
+        loading_time(l, object, "order.horizon", 0, &rig->horizon_ns) && is_ok;
     loading_time(l, object, "order.ahead", 0, &rig->ahead_ns);
     if (is_ok)
         delays(l);
     if (!is_ok || rig->hold_ns <= rig->horizon_ns)
         return;
     const cJSON *hold = loading_get(object, "hold");
-    loading_error(l, hold, "hold is longer than the horizon of %g ms; make "
+    loading_error(l, hold,
+                  "hold is longer than the horizon of %g ms; make "
                   "\"horizon\" at least as long",
                   (double)rig->horizon_ns * 1e-6);
 }
@@ -183,14 +195,16 @@ static void limits(struct loading *l, const cJSON *object)
     rig->max_tracks = fixed + (has_prefix ? 64 : 0);
     const cJSON *node = loading_get(object, "tracks");
     if (loading_integer(l, object, "limits.tracks", 1, 100000,
-                        &rig->max_tracks) && rig->max_tracks < fixed)
-        loading_error(l, node, "limits.tracks is less than the %d tracks of "
-                      "this file; raise it", fixed);
+                        &rig->max_tracks) &&
+        rig->max_tracks < fixed)
+        loading_error(l, node,
+                      "limits.tracks is less than the %d tracks of "
+                      "this file; raise it",
+                      fixed);
     rig->max_ids_per_sender = rig->max_tracks;
     loading_integer(l, object, "limits.ids_per_sender", 1, 100000,
                     &rig->max_ids_per_sender);
-    loading_integer(l, object, "limits.pending", 0, 1000000,
-                    &rig->max_pending);
+    loading_integer(l, object, "limits.pending", 0, 1000000, &rig->max_pending);
     loading_integer(l, object, "limits.subscribers", 1, 1024,
                     &l->s->max_subscribers);
     if (loading_integer(l, object, "limits.steps", 1, 1000000000, &steps))

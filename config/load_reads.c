@@ -12,8 +12,8 @@ struct reading {
     char (*units)[RIG_UNIT_SIZE];
 };
 
-static void unknown_state(const struct reading *c, const cJSON *at,
-                          bool at_key, const char *name)
+static void unknown_state(const struct reading *c, const cJSON *at, bool at_key,
+                          const char *name)
 {
     const char *list[RIG_STATES_MAX + 1];
     loading_state_names(c->kind, list);
@@ -26,8 +26,10 @@ static struct reads_row *add_row(const struct reading *c, const cJSON *node,
 {
     struct reads *r = &c->s->reads;
     if (r->m == READS_MAX) {
-        loading_error(c->l, node, "a sensor reads %d components at most; make "
-                      "two sensors of it", READS_MAX);
+        loading_error(c->l, node,
+                      "a sensor reads %d components at most; make "
+                      "two sensors of it",
+                      READS_MAX);
         return NULL;
     }
     snprintf(c->units[r->m], RIG_UNIT_SIZE, "%s", unit);
@@ -68,8 +70,10 @@ static void read_sum(const struct reading *c, const cJSON *object)
             return;
         }
         if (!cJSON_IsNumber(node) || node->valuedouble == 0) {
-            loading_error(c->l, node, "the coefficient of \"%.64s\" must be a "
-                          "number other than 0; correct it", node->string);
+            loading_error(c->l, node,
+                          "the coefficient of \"%.64s\" must be a "
+                          "number other than 0; correct it",
+                          node->string);
             return;
         }
         if (row == NULL)
@@ -78,8 +82,10 @@ static void read_sum(const struct reading *c, const cJSON *object)
             (row = add_row(c, object, READS_LINEAR, unit)) == NULL)
             return;
         if (row->n_terms == READS_TERMS_MAX) {
-            loading_error_key(c->l, node, "a sum has %d states at most; leave "
-                              "some out", READS_TERMS_MAX);
+            loading_error_key(c->l, node,
+                              "a sum has %d states at most; leave "
+                              "some out",
+                              READS_TERMS_MAX);
             return;
         }
         if (quantity_convert(c->l->units, c->kind->state[i].unit, unit, &scale,
@@ -121,21 +127,24 @@ static bool coordinate(const struct reading *c, const cJSON *node,
         if (cJSON_IsNumber(node) || cJSON_IsString(node))
             return loading_quantity(c->l, node, unit, QUANTITY_POINT,
                                     &term->value);
-        loading_error(c->l, node, "a coordinate must be a state or a length; "
+        loading_error(c->l, node,
+                      "a coordinate must be a state or a length; "
                       "write \"x\" or \"1 m\"");
         return false;
     }
     if (strcmp(c->kind->state[i].unit, unit) != 0) {
-        loading_error(c->l, node, "\"%s\" is in %s, but another coordinate is "
-                      "in %s; declare both states in one unit", text,
-                      c->kind->state[i].unit, unit);
+        loading_error(c->l, node,
+                      "\"%s\" is in %s, but another coordinate is "
+                      "in %s; declare both states in one unit",
+                      text, c->kind->state[i].unit, unit);
         return false;
     }
     if (c->kind->state[i].has_prior)
         return true;
-    loading_error(c->l, node, "starting ranges from data is not built yet; "
-                  "give tracks.%s%s.start of \"%s\"", c->kind->id,
-                  c->kind->is_prefix ? "*" : "", text);
+    loading_error(c->l, node,
+                  "starting ranges from data is not built yet; "
+                  "give tracks.%s%s.start of \"%s\"",
+                  c->kind->id, c->kind->is_prefix ? "*" : "", text);
     return false;
 }
 
@@ -148,7 +157,8 @@ static bool place(const struct reading *c, const cJSON *object,
     if (!cJSON_IsArray(from) || cJSON_GetArraySize(from) != n) {
         loading_error(c->l, from != NULL ? from : object,
                       "\"from\" must list %d coordinates, as many as \"%s\"; "
-                      "give the place of the sensor", n, list->string);
+                      "give the place of the sensor",
+                      n, list->string);
         return false;
     }
     row->n_terms = n;
@@ -156,7 +166,8 @@ static bool place(const struct reading *c, const cJSON *object,
         const cJSON *fixed = cJSON_GetArrayItem(from, i);
         coordinate(c, cJSON_GetArrayItem(list, i), unit, &row->term[i]);
         if (!cJSON_IsNumber(fixed) && !cJSON_IsString(fixed))
-            loading_error(c->l, fixed, "a coordinate of \"from\" must be a "
+            loading_error(c->l, fixed,
+                          "a coordinate of \"from\" must be a "
                           "length; write it like \"2.58 m\"");
         else
             loading_quantity(c->l, fixed, unit, QUANTITY_POINT, &row->from[i]);
@@ -172,7 +183,8 @@ static void sense(const struct reading *c, const cJSON *object,
     const char *unit = "";
     double number = 0;
     if (zero == NULL || turn == NULL) {
-        loading_error(c->l, object, "a bearing needs \"zero\" and \"turn\"; "
+        loading_error(c->l, object,
+                      "a bearing needs \"zero\" and \"turn\"; "
                       "give \"zero\": \"0 deg\" and \"turn\": \"left\" or "
                       "\"right\"");
         return;
@@ -186,14 +198,16 @@ static void sense(const struct reading *c, const cJSON *object,
     }
     if ((!cJSON_IsNumber(zero) && !cJSON_IsString(zero)) ||
         (is_bare && number != 0))
-        loading_error(c->l, zero, "\"zero\" must be an angle with its unit; "
+        loading_error(c->l, zero,
+                      "\"zero\" must be an angle with its unit; "
                       "write it like \"90 deg\"");
     else
         loading_quantity(c->l, zero, "rad", QUANTITY_DIFFERENCE,
                          &row->zero_rad);
     row->turn = strcmp(loading_text(turn), "right") == 0 ? -1 : 1;
     if (row->turn > 0 && strcmp(loading_text(turn), "left") != 0)
-        loading_error(c->l, turn, "\"turn\" must be \"left\" or \"right\"; "
+        loading_error(c->l, turn,
+                      "\"turn\" must be \"left\" or \"right\"; "
                       "left turns from the first axis to the second");
 }
 
@@ -227,8 +241,10 @@ static void read_place(const struct reading *c, const cJSON *object,
         return;
     }
     if (unit == NULL) {
-        loading_error(c->l, form, "\"%s\" names no state of the track %s; "
-                      "name at least one", form->string, c->kind->id);
+        loading_error(c->l, form,
+                      "\"%s\" names no state of the track %s; "
+                      "name at least one",
+                      form->string, c->kind->id);
         return;
     }
     row = add_row(c, form, is_range ? READS_RANGE : READS_BEARING,
@@ -248,15 +264,16 @@ static void read_place(const struct reading *c, const cJSON *object,
 /* True if the object is a form that is known but not built. */
 static bool is_planned(const struct reading *c, const cJSON *object)
 {
-    static const char *const planned[] = {"range-rate", "product",
-                                          "polynomial", "change", "mean",
-                                          "expression"};
+    static const char *const planned[] = {
+        "range-rate", "product", "polynomial", "change", "mean", "expression"};
     for (int i = 0; i < (int)(sizeof planned / sizeof *planned); i++) {
         const cJSON *node = loading_get(object, planned[i]);
         if (node == NULL || loading_state(c->kind, planned[i]) >= 0)
             continue;
-        loading_error_key(c->l, node, "\"%s\" is planned but not built yet; "
-                          "remove it", planned[i]);
+        loading_error_key(c->l, node,
+                          "\"%s\" is planned but not built yet; "
+                          "remove it",
+                          planned[i]);
         return true;
     }
     return false;
@@ -270,7 +287,8 @@ static void read_one(const struct reading *c, const cJSON *node)
         return;
     }
     if (!cJSON_IsObject(node)) {
-        loading_error(c->l, node, "\"reads\" takes states, sums, range and "
+        loading_error(c->l, node,
+                      "\"reads\" takes states, sums, range and "
                       "bearing; write it like \"x\" or {\"x\": 1, \"bias\": "
                       "1}");
         return;
@@ -282,8 +300,10 @@ static void read_one(const struct reading *c, const cJSON *node)
             return;
         }
         if (form != NULL && loading_state(c->kind, forms[i]) < 0) {
-            loading_error(c->l, form, "\"%s\" must be a list of coordinates; "
-                          "write it like [\"x\", \"y\"]", forms[i]);
+            loading_error(c->l, form,
+                          "\"%s\" must be a list of coordinates; "
+                          "write it like [\"x\", \"y\"]",
+                          forms[i]);
             return;
         }
     }

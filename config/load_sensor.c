@@ -20,8 +20,10 @@ static const cJSON *component(struct loading *l, const cJSON *node, int i,
     if (n == m)
         return cJSON_GetArrayItem(node, i);
     if (i == 0 && n > 0)
-        loading_error(l, node, "\"%s\" lists %d values, but the sensor reads "
-                      "%d; give %d, or one for all", node->string, n, m, m);
+        loading_error(l, node,
+                      "\"%s\" lists %d values, but the sensor reads "
+                      "%d; give %d, or one for all",
+                      node->string, n, m, m);
     return NULL;
 }
 
@@ -45,7 +47,8 @@ static int kind_of(struct loading *l, const cJSON *object)
     const cJSON *node = loading_get(object, "track");
     if (node == NULL && rig->n_kinds != 1) {
         if (rig->n_kinds > 1)
-            loading_error_key(l, object, "the sensor \"%.64s\" has no track "
+            loading_error_key(l, object,
+                              "the sensor \"%.64s\" has no track "
                               "and the file has %d; give \"track\"",
                               object->string, rig->n_kinds);
         return -1;
@@ -70,8 +73,8 @@ static int kind_of(struct loading *l, const cJSON *object)
 static void unit_of(struct loading *l, const cJSON *object,
                     struct rig_sensor *s, int i, const char *reads)
 {
-    const cJSON *node = component(l, loading_get(object, "unit"), i,
-                                  s->reads.m);
+    const cJSON *node =
+        component(l, loading_get(object, "unit"), i, s->reads.m);
     const char *unit = cJSON_IsString(node) ? node->valuestring : reads;
     struct err err;
     s->scale[i] = 1;
@@ -82,7 +85,8 @@ static void unit_of(struct loading *l, const cJSON *object,
     }
     snprintf(s->unit[i], RIG_UNIT_SIZE, "%s", unit);
     if (quantity_convert(l->units, unit, reads, &s->scale[i], &s->shift[i],
-                         &err) != ST_OK && node != NULL)
+                         &err) != ST_OK &&
+        node != NULL)
         loading_error(l, node, "%s", err.text);
 }
 
@@ -91,15 +95,17 @@ static void spread_of(struct loading *l, const cJSON *object,
                       struct rig_sensor *s, int i)
 {
     const cJSON *node = component(l, loading_get(object, "u"), i, s->reads.m);
-    const cJSON *step = component(l, loading_get(object, "resolution"), i,
-                                  s->reads.m);
+    const cJSON *step =
+        component(l, loading_get(object, "resolution"), i, s->reads.m);
     double u, resolution = 0;
-    if (node == NULL || !loading_quantity(l, node, s->unit[i],
-                                          QUANTITY_DIFFERENCE, &u))
+    if (node == NULL ||
+        !loading_quantity(l, node, s->unit[i], QUANTITY_DIFFERENCE, &u))
         return;
     if (!(u > 0)) {
-        loading_error(l, node, "standard uncertainty must be greater than 0; "
-                      "give one standard deviation, in %s", s->unit[i]);
+        loading_error(l, node,
+                      "standard uncertainty must be greater than 0; "
+                      "give one standard deviation, in %s",
+                      s->unit[i]);
         return;
     }
     if (step != NULL && !loading_size(l, step, s->unit[i], false, &resolution))
@@ -108,12 +114,12 @@ static void spread_of(struct loading *l, const cJSON *object,
     double u_read = fmax(u, least) * fabs(s->scale[i]);
     s->r[i] = u_read * u_read;
     if (!isfinite(s->r[i]) || !(s->r[i] > 0))
-        loading_error(l, node, "the square of this uncertainty is beyond what "
+        loading_error(l, node,
+                      "the square of this uncertainty is beyond what "
                       "a number holds; choose another unit");
 }
 
-static void timing(struct loading *l, const cJSON *object,
-                   struct rig_sensor *s)
+static void timing(struct loading *l, const cJSON *object, struct rig_sensor *s)
 {
     const cJSON *rate = loading_get(object, "rate");
     const cJSON *times = loading_get(object, "time");
@@ -122,7 +128,8 @@ static void timing(struct loading *l, const cJSON *object,
     if (rate != NULL &&
         loading_quantity(l, rate, "Hz", QUANTITY_DIFFERENCE, &s->rate_hz) &&
         !(s->rate_hz >= 1e-6 && s->rate_hz <= 1e6))
-        loading_error(l, rate, "\"rate\" must be from 1e-6 Hz to 1e6 Hz; give "
+        loading_error(l, rate,
+                      "\"rate\" must be from 1e-6 Hz to 1e6 Hz; give "
                       "the measurements per second");
     double silent_s = fmax(5 / s->rate_hz, 0.05);
     s->silent_after_ns = silent_s < 4e9 ? llround(silent_s * 1e9) : 0;
@@ -146,7 +153,8 @@ static void gate(struct loading *l, const cJSON *node, struct rig_sensor *s)
         s->has_gate = false;
     else if (!cJSON_IsNumber(node) || !(node->valuedouble > 0) ||
              !(node->valuedouble < 1))
-        loading_error(l, node, "\"gate\" must be a probability between 0 and "
+        loading_error(l, node,
+                      "\"gate\" must be a probability between 0 and "
                       "1, or \"off\"; 0.999 refuses 1 of 1000 sound "
                       "measurements");
     else
@@ -159,17 +167,21 @@ static void add_sensor(struct loading *l, const cJSON *node,
     char units[READS_MAX][RIG_UNIT_SIZE] = {""};
     const cJSON *reads = loading_get(node, "reads");
     if (!wire_is_id(node->string, strlen(node->string)))
-        loading_error_key(l, node, "\"%.64s\" cannot name a sensor; use "
+        loading_error_key(l, node,
+                          "\"%.64s\" cannot name a sensor; use "
                           "letters, digits and _ . : - (up to 63)",
                           node->string);
     snprintf(s->name, sizeof s->name, "%.63s", node->string);
     if (loading_get(node, "like") != NULL)
         return; /* reported: what it lacks is not known */
     if (reads == NULL)
-        loading_error_key(l, node, "the sensor \"%s\" reads nothing; give "
-                          "\"reads\": \"x\"", s->name);
+        loading_error_key(l, node,
+                          "the sensor \"%s\" reads nothing; give "
+                          "\"reads\": \"x\"",
+                          s->name);
     if (loading_get(node, "u") == NULL)
-        loading_error_key(l, node, "the sensor \"%s\" has no \"u\"; give its "
+        loading_error_key(l, node,
+                          "the sensor \"%s\" has no \"u\"; give its "
                           "standard uncertainty, like \"u\": \"2 mm\"",
                           s->name);
     timing(l, node, s);
@@ -206,8 +218,10 @@ static void unread_tracks(struct loading *l)
         for (int i = 0; i < rig->n_sensors; i++)
             is_read = is_read || rig->sensor[i].kind == k;
         if (!is_read)
-            loading_error_key(l, node, "no sensor reads the track \"%s\"; add "
-                              "one, or remove the track", node->string);
+            loading_error_key(l, node,
+                              "no sensor reads the track \"%s\"; add "
+                              "one, or remove the track",
+                              node->string);
         k++;
     }
 }

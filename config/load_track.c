@@ -9,9 +9,9 @@
 
 #include "core/wire/decode.h"
 
-static const char *const models[] = {"constant", "random-walk", "gauss-markov",
-                                     "constant-velocity",
-                                     "constant-acceleration", NULL};
+static const char *const models[] = {
+    "constant",          "random-walk",           "gauss-markov",
+    "constant-velocity", "constant-acceleration", NULL};
 
 int loading_state(const struct rig_kind *kind, const char *name)
 {
@@ -78,12 +78,16 @@ static void unmodelled(struct loading *l, const cJSON *object, struct block *b,
             (strcmp(each->string, "rate") == 0 ||
              strcmp(each->string, "accel") == 0 ||
              strcmp(each->string, "jerk") == 0))
-            loading_error_key(l, each, "\"%s\" does not belong to %s; give "
-                              "\"%s\"", each->string, models[b->model], key);
+            loading_error_key(l, each,
+                              "\"%s\" does not belong to %s; give "
+                              "\"%s\"",
+                              each->string, models[b->model], key);
     }
     if (node == NULL || lasts == NULL) {
-        loading_error_key(l, object, "\"unmodelled\" needs \"%s\" and "
-                          "\"lasts\"; give both", key);
+        loading_error_key(l, object,
+                          "\"unmodelled\" needs \"%s\" and "
+                          "\"lasts\"; give both",
+                          key);
         return;
     }
     quantity_derivative_unit(unit, b->n, motion, sizeof motion);
@@ -98,8 +102,10 @@ static void refuse_key(struct loading *l, const cJSON *node, const char *key,
 {
     const cJSON *at = loading_get(node, key);
     if (at != NULL)
-        loading_error_key(l, at, "\"%s\" does not belong to the model %s; "
-                          "remove it", key, models[b->model]);
+        loading_error_key(l, at,
+                          "\"%s\" does not belong to the model %s; "
+                          "remove it",
+                          key, models[b->model]);
 }
 
 static void gauss_markov(struct loading *l, const cJSON *node, struct block *b,
@@ -114,7 +120,8 @@ static void gauss_markov(struct loading *l, const cJSON *node, struct block *b,
     if (mean != NULL)
         loading_quantity(l, mean, state->unit, QUANTITY_POINT, &b->mean);
     if (tau == NULL || (u == NULL) == (q == NULL)) {
-        loading_error_key(l, node, "the gauss-markov state \"%s\" needs "
+        loading_error_key(l, node,
+                          "the gauss-markov state \"%s\" needs "
                           "\"tau\" and either \"u\" or \"q\"; give them",
                           state->name);
         return;
@@ -149,10 +156,11 @@ static void noise(struct loading *l, const cJSON *node, struct block *b,
         return;
     }
     if ((q == NULL) == (words == NULL)) {
-        loading_error_key(l, node, "the state \"%s\" needs either \"q\" or "
+        loading_error_key(l, node,
+                          "the state \"%s\" needs either \"q\" or "
                           "\"unmodelled\"; give one, like \"unmodelled\": "
-                          "{\"%s\": .., \"lasts\": ..}", state->name,
-                          unmodelled_key(b->model));
+                          "{\"%s\": .., \"lasts\": ..}",
+                          state->name, unmodelled_key(b->model));
         return;
     }
     density_unit(state->unit, 2 * b->n - 1, unit, sizeof unit);
@@ -180,17 +188,20 @@ static bool block_names(struct loading *l, const cJSON *node,
     struct err err;
     int n = l->problems->n;
     if (name == NULL)
-        loading_error(l, node, "a state block has no name; give \"name\": "
+        loading_error(l, node,
+                      "a state block has no name; give \"name\": "
                       "\"x\"");
     else if (cJSON_IsString(name) && !is_state_name(name->valuestring))
-        loading_error(l, name, "\"%.64s\" cannot name a state; use a letter, "
+        loading_error(l, name,
+                      "\"%.64s\" cannot name a state; use a letter, "
                       "then letters, digits and _ (not \"at\")",
                       name->valuestring);
     else if (loading_state(kind, loading_text(name)) >= 0)
         loading_error(l, name, "the state \"%s\" stands twice; rename one",
                       name->valuestring);
     if (unit == NULL)
-        loading_error(l, node, "the state \"%.64s\" has no unit; give "
+        loading_error(l, node,
+                      "the state \"%.64s\" has no unit; give "
                       "\"unit\": \"m\", or \"1\" for none",
                       loading_text(name));
     else if (strlen(loading_text(unit)) >= RIG_UNIT_SIZE - 4)
@@ -209,7 +220,8 @@ static void add_block(struct loading *l, const cJSON *node,
     const cJSON *model = loading_get(node, "model");
     int at = kind->n, m = 0;
     if (model == NULL)
-        loading_error(l, node, "a state block has no model; give \"model\": "
+        loading_error(l, node,
+                      "a state block has no model; give \"model\": "
                       "\"constant-velocity\" or another");
     while (models[m] != NULL && strcmp(models[m], loading_text(model)) != 0)
         m++;
@@ -218,8 +230,10 @@ static void add_block(struct loading *l, const cJSON *node,
     struct block b = {.model = (enum block_model)m, .at = at};
     b.n = block_states(b.model);
     if (at + b.n > RIG_STATES_MAX || kind->n_blocks == RIG_BLOCKS_MAX) {
-        loading_error(l, node, "a track holds %d states in %d blocks at most; "
-                      "leave some out", RIG_STATES_MAX, RIG_BLOCKS_MAX);
+        loading_error(l, node,
+                      "a track holds %d states in %d blocks at most; "
+                      "leave some out",
+                      RIG_STATES_MAX, RIG_BLOCKS_MAX);
         return;
     }
     for (int i = 0; i < b.n; i++) {
@@ -248,19 +262,20 @@ static struct rig_state *named(struct loading *l, const cJSON *node,
     return NULL;
 }
 
-static void start(struct loading *l, const cJSON *object,
-                  struct rig_kind *kind)
+static void start(struct loading *l, const cJSON *object, struct rig_kind *kind)
 {
     const cJSON *node;
     cJSON_ArrayForEach(node, object)
     {
         if (strcmp(node->string, "at") == 0) {
             const char *text = loading_text(node);
-            kind->has_start_at = wire_parse_time(text, strlen(text),
-                                                 &kind->start_at_ns);
+            kind->has_start_at =
+                wire_parse_time(text, strlen(text), &kind->start_at_ns);
             if (!kind->has_start_at && cJSON_IsString(node))
-                loading_error(l, node, "\"%.64s\" is not a time; write it "
-                              "like \"2026-05-04T10:00:00Z\"", text);
+                loading_error(l, node,
+                              "\"%.64s\" is not a time; write it "
+                              "like \"2026-05-04T10:00:00Z\"",
+                              text);
             continue;
         }
         struct rig_state *s = named(l, node, kind);
@@ -269,8 +284,10 @@ static void start(struct loading *l, const cJSON *object,
         if (s == NULL || !cJSON_IsObject(node))
             continue;
         if (mean == NULL || u == NULL)
-            loading_error_key(l, node, "the start of \"%s\" needs \"mean\" "
-                              "and \"u\"; give both", s->name);
+            loading_error_key(l, node,
+                              "the start of \"%s\" needs \"mean\" "
+                              "and \"u\"; give both",
+                              s->name);
         else if (loading_quantity(l, mean, s->unit, QUANTITY_POINT,
                                   &s->prior_mean) &&
                  loading_size(l, u, s->unit, true, &s->prior_u))
@@ -303,9 +320,11 @@ static void identify(struct loading *l, const cJSON *node,
     kind->is_prefix = n > 1 && node->string[n - 1] == '*';
     n -= kind->is_prefix;
     if (!wire_is_id(node->string, n))
-        loading_error_key(l, node, "\"%.64s\" cannot name a track; use "
+        loading_error_key(l, node,
+                          "\"%.64s\" cannot name a track; use "
                           "letters, digits and _ . : - (up to 63), \"raft-*\" "
-                          "for a prefix", node->string);
+                          "for a prefix",
+                          node->string);
     snprintf(kind->id, sizeof kind->id, "%.*s", (int)(n < 63 ? n : 63),
              node->string);
 }
@@ -319,8 +338,10 @@ static void add_track(struct loading *l, const cJSON *node,
     if (loading_get(node, "like") != NULL)
         return; /* reported: what it lacks is not known */
     if (state == NULL)
-        loading_error_key(l, node, "the track \"%.64s\" has no state; give "
-                          "\"state\": [{\"model\": ..}]", node->string);
+        loading_error_key(l, node,
+                          "the track \"%.64s\" has no state; give "
+                          "\"state\": [{\"model\": ..}]",
+                          node->string);
     if (cJSON_IsObject(state))
         add_block(l, state, kind);
     else
@@ -334,8 +355,7 @@ static void add_track(struct loading *l, const cJSON *node,
                  &kind->lost_after_ns);
     loading_integer(l, recover, "tracks.*.recover.refused", 1, 1000000,
                     &kind->recover_refused);
-    loading_time(l, recover, "tracks.*.recover.for", 0,
-                 &kind->recover_for_ns);
+    loading_time(l, recover, "tracks.*.recover.for", 0, &kind->recover_for_ns);
     if (kind->n_blocks == 0 || l->problems->n != n)
         return; /* its states are not all known */
     start(l, loading_get(node, "start"), kind);
@@ -358,8 +378,10 @@ void loading_tracks(struct loading *l)
     cJSON_ArrayForEach(node, tracks)
     {
         if (rig->n_kinds == RIG_KINDS_MAX) {
-            loading_error_key(l, node, "more than %d tracks are written; use "
-                              "a prefix like \"raft-*\"", RIG_KINDS_MAX);
+            loading_error_key(l, node,
+                              "more than %d tracks are written; use "
+                              "a prefix like \"raft-*\"",
+                              RIG_KINDS_MAX);
             return;
         }
         if (cJSON_IsObject(node))

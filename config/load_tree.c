@@ -92,7 +92,8 @@ static void expand(struct loading *l, cJSON *group, cJSON *entry,
         braces_put(b, i, entry->string, name);
         const cJSON *other = loading_get(group, name);
         if (other != NULL) {
-            loading_error_key(l, entry, "\"%.64s\" makes \"%.64s\", which "
+            loading_error_key(l, entry,
+                              "\"%.64s\" makes \"%.64s\", which "
                               "stands in the file as well; rename one",
                               entry->string, name);
             continue;
@@ -116,7 +117,8 @@ void loading_expand(struct loading *l, cJSON *group)
             continue;
         if (!braces_find(entry->string, &b) || b.last < b.first ||
             b.last - b.first >= EXPAND_MAX) {
-            loading_error_key(l, entry, "\"%.64s\" is not a row of names; "
+            loading_error_key(l, entry,
+                              "\"%.64s\" is not a row of names; "
                               "write it like \"laser{1..6}\", %d at most",
                               entry->string, EXPAND_MAX);
         } else {
@@ -159,8 +161,7 @@ static cJSON *step(const cJSON *node, const char *path, size_t *len)
     for (cJSON *child = node->child; child != NULL; child = child->next) {
         size_t n = child->string != NULL ? strlen(child->string) : 0;
         if (n > 0 && strncmp(path, child->string, n) == 0 &&
-            (path[n] == '.' || path[n] == '\0') &&
-            (best == NULL || n > *len)) {
+            (path[n] == '.' || path[n] == '\0') && (best == NULL || n > *len)) {
             best = child;
             *len = n;
         }
@@ -222,13 +223,15 @@ static void put(struct loading *l, const char *path, cJSON *value)
                         node == loading_get(l->root, "tracks");
         if (child == NULL && is_named && !is_last) {
             no_such(l, node, value,
-                    node == loading_get(l->root, "tracks") ? "track"
-                                                           : "sensor", key);
+                    node == loading_get(l->root, "tracks") ? "track" : "sensor",
+                    key);
             break;
         }
         if ((child == NULL && !cJSON_IsObject(node)) || len == 0) {
-            loading_error(l, value, "there is no \"%.64s\"; join keys by "
-                          "dots, a block by its name or place from 0", path);
+            loading_error(l, value,
+                          "there is no \"%.64s\"; join keys by "
+                          "dots, a block by its name or place from 0",
+                          path);
             break;
         }
         if (is_last) {
@@ -296,8 +299,10 @@ void loading_remove(struct loading *l)
         } else if (above == loading_get(l->root, "sensors") && above != NULL) {
             no_such(l, above, &nothing, "sensor", path);
         } else {
-            loading_error(l, &nothing, "there is nothing to remove at "
-                          "\"%.64s\"; leave this change out", path);
+            loading_error(l, &nothing,
+                          "there is nothing to remove at "
+                          "\"%.64s\"; leave this change out",
+                          path);
         }
     }
 }
@@ -326,8 +331,10 @@ static void like(struct loading *l, cJSON *group, cJSON *entry,
         if (model == NULL) {
             no_such(l, group, node, what, node->valuestring);
         } else if (model == entry || i == LIKE_MAX) {
-            loading_error(l, node, "\"like\" leads back to itself; name a %s "
-                          "that is written out", what);
+            loading_error(l, node,
+                          "\"like\" leads back to itself; name a %s "
+                          "that is written out",
+                          what);
             return; /* what stays says that the entry is not whole */
         }
         if (model == NULL)

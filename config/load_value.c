@@ -107,8 +107,7 @@ void loading_error(struct loading *l, const cJSON *at, const char *fmt, ...)
     va_end(args);
 }
 
-void loading_error_key(struct loading *l, const cJSON *at, const char *fmt,
-                       ...)
+void loading_error_key(struct loading *l, const cJSON *at, const char *fmt, ...)
 {
     va_list args;
     va_start(args, fmt);
@@ -204,8 +203,10 @@ bool loading_time(struct loading *l, const cJSON *object, const char *row,
     if (!loading_quantity(l, node, "s", QUANTITY_DIFFERENCE, &s))
         return false;
     if (s < least_s || !(s < 4e9)) {
-        loading_error(l, node, "\"%.64s\" must be a time from %g s to 4e9 s; "
-                      "write it like \"20 ms\"", node->string, least_s);
+        loading_error(l, node,
+                      "\"%.64s\" must be a time from %g s to 4e9 s; "
+                      "write it like \"20 ms\"",
+                      node->string, least_s);
         return false;
     }
     *ns = llround(s * 1e9);
@@ -227,8 +228,10 @@ bool loading_bytes(struct loading *l, const cJSON *object, const char *row,
         return false;
     }
     if (n < 0 || n > 1e18) {
-        loading_error(l, node, "\"%.64s\" must be from 0 B to 1e18 B; write "
-                      "it like \"4 MiB\"", node->string);
+        loading_error(l, node,
+                      "\"%.64s\" must be from 0 B to 1e18 B; write "
+                      "it like \"4 MiB\"",
+                      node->string);
         return false;
     }
     *bytes = llround(n);
@@ -244,8 +247,8 @@ bool loading_integer(struct loading *l, const cJSON *object, const char *row,
     double n;
     if (node == NULL) {
         if (standard == NULL ||
-            quantity_parse(l->units, standard, "1", QUANTITY_POINT, &n,
-                           &err) != ST_OK)
+            quantity_parse(l->units, standard, "1", QUANTITY_POINT, &n, &err) !=
+                ST_OK)
             return false;
         *value = (int)n;
         return true;
@@ -259,8 +262,10 @@ bool loading_integer(struct loading *l, const cJSON *object, const char *row,
         return false;
     }
     if (n < least || n > most) {
-        loading_error(l, node, "\"%.64s\" must be a whole number from %d to "
-                      "%d; correct it", node->string, least, most);
+        loading_error(l, node,
+                      "\"%.64s\" must be a whole number from %d to "
+                      "%d; correct it",
+                      node->string, least, most);
         return false;
     }
     *value = (int)n;

@@ -27,8 +27,8 @@ struct loading {
     struct quantity_units *units;
     struct problems *problems;
     const char *path;
-    const char *raw;  /* as the user wrote it                             */
-    char *text;       /* the same without comments                        */
+    const char *raw; /* as the user wrote it                             */
+    char *text;      /* the same without comments                        */
     size_t len;
     const struct settings_change *changes;
     int n_changes;
@@ -36,7 +36,7 @@ struct loading {
     bool is_out_of_memory;
     int n_marks;
     struct {
-        long place;   /* order among reports: offset, then changes        */
+        long place; /* order among reports: offset, then changes        */
         size_t start, len; /* its part of problems->text                  */
     } mark[PROBLEMS_MAX];
 };
@@ -44,8 +44,8 @@ struct loading {
 /* One report at a value, or at its key: "reason; remedy". */
 void loading_error(struct loading *l, const cJSON *at, const char *fmt, ...)
     __attribute__((format(printf, 3, 4)));
-void loading_error_key(struct loading *l, const cJSON *at, const char *fmt,
-                       ...) __attribute__((format(printf, 3, 4)));
+void loading_error_key(struct loading *l, const cJSON *at, const char *fmt, ...)
+    __attribute__((format(printf, 3, 4)));
 
 /* Puts the reports in the order of the file and drops equal ones, which names
  * in braces make. */

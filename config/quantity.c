@@ -21,45 +21,43 @@ struct quantity_units {
  * kinds of their own. */
 static const struct {
     const char *name, *means;
-} aliases[] = {
-    {"deg", "(0.017453292519943295 rad)"},
-    {"\xc2\xb0", "(0.017453292519943295 rad)"},
-    {"rev", "(6.283185307179586 rad)"},
-    {"turn", "(6.283185307179586 rad)"},
-    {"rpm", "(0.10471975511965977 rad/s)"},
-    {"gn", "(9.80665 m/s2)"},
-    {"mgn", "(0.00980665 m/s2)"},
-    {"kn", "(1852 m/h)"},
-    {"B", "byteq"},
-    {"byte", "byteq"},
-    {"bytes", "byteq"},
-    {"kB", "(1e3 byteq)"},
-    {"MB", "(1e6 byteq)"},
-    {"GB", "(1e9 byteq)"},
-    {"TB", "(1e12 byteq)"},
-    {"KiB", "(1024 byteq)"},
-    {"MiB", "(1048576 byteq)"},
-    {"GiB", "(1073741824 byteq)"},
-    {"TiB", "(1099511627776 byteq)"},
-    {"count", "countq"},
-    {"counts", "countq"},
-    {"pulse", "countq"},
-    {"pulses", "countq"},
-    {"tick", "countq"},
-    {"ticks", "countq"}};
+} aliases[] = {{"deg", "(0.017453292519943295 rad)"},
+               {"\xc2\xb0", "(0.017453292519943295 rad)"},
+               {"rev", "(6.283185307179586 rad)"},
+               {"turn", "(6.283185307179586 rad)"},
+               {"rpm", "(0.10471975511965977 rad/s)"},
+               {"gn", "(9.80665 m/s2)"},
+               {"mgn", "(0.00980665 m/s2)"},
+               {"kn", "(1852 m/h)"},
+               {"B", "byteq"},
+               {"byte", "byteq"},
+               {"bytes", "byteq"},
+               {"kB", "(1e3 byteq)"},
+               {"MB", "(1e6 byteq)"},
+               {"GB", "(1e9 byteq)"},
+               {"TB", "(1e12 byteq)"},
+               {"KiB", "(1024 byteq)"},
+               {"MiB", "(1048576 byteq)"},
+               {"GiB", "(1073741824 byteq)"},
+               {"TiB", "(1099511627776 byteq)"},
+               {"count", "countq"},
+               {"counts", "countq"},
+               {"pulse", "countq"},
+               {"pulses", "countq"},
+               {"tick", "countq"},
+               {"ticks", "countq"}};
 
 /* Letters that a reader and the unit library take for different things. */
 static const struct {
     const char *name, *hint;
-} refused[] = {
-    {"g", "write gram for a mass or gn for standard gravity"},
-    {"C", "write degC for a temperature or coulomb for a charge"},
-    {"F", "write degF for a temperature or farad for a capacitance"},
-    {"since", "give a unit without a reference time"},
-    {"after", "give a unit without a reference time"},
-    {"from", "give a unit without a reference"},
-    {"ref", "give a unit without a reference time"},
-    {"dB", "give the plain ratio"}};
+} refused[] = {{"g", "write gram for a mass or gn for standard gravity"},
+               {"C", "write degC for a temperature or coulomb for a charge"},
+               {"F", "write degF for a temperature or farad for a capacitance"},
+               {"since", "give a unit without a reference time"},
+               {"after", "give a unit without a reference time"},
+               {"from", "give a unit without a reference"},
+               {"ref", "give a unit without a reference time"},
+               {"dB", "give the plain ratio"}};
 
 #define LENGTH(a) ((int)(sizeof(a) / sizeof *(a)))
 
@@ -202,14 +200,14 @@ static status parse_unit(struct quantity_units *u, const char *unit,
     if (!has_reference && has_factor(unit))
         return err_set(err, ST_SCHEMA,
                        "the unit \"%.64s\" holds a number; digits in a unit "
-                       "are powers, like m/s2", unit);
-    *out = has_reference
-               ? NULL
-               : ut_parse(u->system, text, UT_UTF8);
+                       "are powers, like m/s2",
+                       unit);
+    *out = has_reference ? NULL : ut_parse(u->system, text, UT_UTF8);
     if (*out == NULL || text[0] == '\0')
         return err_set(err, ST_SCHEMA,
                        "the unit \"%.64s\" is not known; write units like "
-                       "mm, m/s2, deg, rev/min, %%, or 1", unit);
+                       "mm, m/s2, deg, rev/min, %%, or 1",
+                       unit);
     return ST_OK;
 }
 
@@ -239,7 +237,8 @@ static status kinds_differ(const char *from, const char *to, struct err *err)
         hint = " (rev/min and rad/s turn, Hz counts)";
     return err_set(err, ST_SCHEMA,
                    "the unit \"%.64s\" is of another kind than \"%.64s\"; "
-                   "give one that converts to %.64s%s", from, to, to, hint);
+                   "give one that converts to %.64s%s",
+                   from, to, to, hint);
 }
 
 /* Slope and offset from a converter; false if it is no straight line. */
@@ -317,7 +316,8 @@ status quantity_parse(struct quantity_units *u, const char *text,
     if (!quantity_split(text, value, &unit))
         return err_set(err, ST_SCHEMA,
                        "\"%.64s\" is not a number with a unit; write it like "
-                       "\"1.5 %.32s\"", text, to);
+                       "\"1.5 %.32s\"",
+                       text, to);
     if (unit[0] == '\0')
         return ST_OK;
     status st = quantity_convert(u, unit, to, &scale, &shift, err);
@@ -354,8 +354,8 @@ void quantity_derivative_unit(const char *unit, int times, char *out,
         snprintf(out, size, "%.*s/s%d", (int)before, unit, power);
 }
 
-status quantity_time_ns(struct quantity_units *u, const char *text,
-                        int64_t *ns, struct err *err)
+status quantity_time_ns(struct quantity_units *u, const char *text, int64_t *ns,
+                        struct err *err)
 {
     double s;
     status st = quantity_parse(u, text, "s", QUANTITY_DIFFERENCE, &s, err);

@@ -48,7 +48,7 @@ void quantity_derivative_unit(const char *unit, int times, char *out,
                               size_t size);
 
 /* A duration ("12 ms", 0.5 = seconds) to whole ns. */
-status quantity_time_ns(struct quantity_units *u, const char *text,
-                        int64_t *ns, struct err *err) MUST_USE;
+status quantity_time_ns(struct quantity_units *u, const char *text, int64_t *ns,
+                        struct err *err) MUST_USE;
 
 #endif

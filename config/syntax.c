@@ -7,8 +7,8 @@
 #include "core/wire/decode.h"
 
 struct scan {
-    const char *s;     /* where it stands                                 */
-    const char *what;  /* the fault                                       */
+    const char *s;    /* where it stands                                 */
+    const char *what; /* the fault                                       */
     char open[TEXTPOS_DEPTH_MAX + 1];
     int depth;
 };

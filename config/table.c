@@ -86,8 +86,8 @@ static void say(const struct out *out, const char *fmt, ...)
 
 static void help_of(const struct out *out, const struct table_row *row)
 {
-    say(out, "%s%s", row->path, row->is_planned ? "  (planned, not built yet)"
-                                                : "");
+    say(out, "%s%s", row->path,
+        row->is_planned ? "  (planned, not built yet)" : "");
     say(out, "    %s", row->help);
     if (row->is_planned)
         return;

@@ -11,10 +11,10 @@
 #include <stdbool.h>
 
 enum table_value {
-    TABLE_OBJECT,   /* keys as in the table                               */
-    TABLE_NAMED,    /* an object whose keys the user chooses              */
+    TABLE_OBJECT, /* keys as in the table                               */
+    TABLE_NAMED,  /* an object whose keys the user chooses              */
     TABLE_TEXT,
-    TABLE_CHOICE,   /* one of the texts in `of`, split by '|'             */
+    TABLE_CHOICE, /* one of the texts in `of`, split by '|'             */
     TABLE_INTEGER,
     TABLE_NUMBER,
     TABLE_QUANTITY, /* a number, or a text with a unit                    */
@@ -24,7 +24,7 @@ enum table_value {
 struct table_row {
     const char *path;
     enum table_value value;
-    bool is_list;             /* a list of such values is allowed as well */
+    bool is_list; /* a list of such values is allowed as well */
     bool is_planned;
     const char *of;           /* quantity: its unit, or in words; choice: the
                                  choices                                  */

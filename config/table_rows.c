@@ -4,11 +4,18 @@
 
 #include "config/table.h"
 
-#define ROW(path, value, of, standard, help)                                  \
-    {path, value, false, false, of, standard, help}
-#define LIST(path, value, of, standard, help)                                 \
-    {path, value, true, false, of, standard, help}
-#define PLANNED(path, help) {path, TABLE_ANY, true, true, NULL, NULL, help}
+#define ROW(path, value, of, standard, help)                                   \
+    {                                                                          \
+        path, value, false, false, of, standard, help                          \
+    }
+#define LIST(path, value, of, standard, help)                                  \
+    {                                                                          \
+        path, value, true, false, of, standard, help                           \
+    }
+#define PLANNED(path, help)                                                    \
+    {                                                                          \
+        path, TABLE_ANY, true, true, NULL, NULL, help                          \
+    }
 
 const struct table_row table_rows[] = {
     ROW("$schema", TABLE_TEXT, NULL, NULL,
@@ -65,7 +72,8 @@ const struct table_row table_rows[] = {
          "state blocks, each a model in continuous time"),
     ROW("tracks.*.state.model", TABLE_CHOICE,
         "constant|random-walk|gauss-markov|constant-velocity|"
-        "constant-acceleration", NULL, "how the state moves by itself"),
+        "constant-acceleration",
+        NULL, "how the state moves by itself"),
     ROW("tracks.*.state.name", TABLE_TEXT, NULL, NULL,
         "its name; derivatives are name.rate and name.accel"),
     ROW("tracks.*.state.unit", TABLE_TEXT, NULL, NULL,
@@ -74,8 +82,8 @@ const struct table_row table_rows[] = {
         "noise density, in unit^2/s, unit^2/s3 or unit^2/s5 by model"),
     ROW("tracks.*.state.unmodelled", TABLE_OBJECT, NULL, NULL,
         "noise in words: what the model leaves out; q = a^2 lasts"),
-    ROW("tracks.*.state.unmodelled.rate", TABLE_QUANTITY,
-        "unit of the state/s", NULL, "for a random-walk"),
+    ROW("tracks.*.state.unmodelled.rate", TABLE_QUANTITY, "unit of the state/s",
+        NULL, "for a random-walk"),
     ROW("tracks.*.state.unmodelled.accel", TABLE_QUANTITY,
         "unit of the state/s2", NULL, "for constant-velocity"),
     ROW("tracks.*.state.unmodelled.jerk", TABLE_QUANTITY,

@@ -289,8 +289,8 @@ static int edits(const char *a, const char *b)
             int best = last[j - 1] + (a[i - 1] != b[j - 1]);
             best = last[j] + 1 < best ? last[j] + 1 : best;
             best = now[j - 1] + 1 < best ? now[j - 1] + 1 : best;
-            if (i > 1 && j > 1 && a[i - 1] == b[j - 2] && a[i - 2] == b[j - 1]
-                && row[(i + 1) % 3][j - 2] + 1 < best)
+            if (i > 1 && j > 1 && a[i - 1] == b[j - 2] &&
+                a[i - 2] == b[j - 1] && row[(i + 1) % 3][j - 2] + 1 < best)
                 best = row[(i + 1) % 3][j - 2] + 1;
             now[j] = best;
         }

@@ -15,7 +15,7 @@
 #include "config/err.h"
 
 enum {
-    PROBLEMS_MAX = 100,    /* reports shown; the rest is counted          */
+    PROBLEMS_MAX = 100,     /* reports shown; the rest is counted          */
     TEXTPOS_DEPTH_MAX = 32, /* nesting of a rig file                      */
     TEXTPOS_NONE = -1
 };

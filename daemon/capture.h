@@ -1,7 +1,7 @@
 /* capture.h - reads captures: one pcap file, or a folder of segments in order.
  *
- * Files are read by the buffer, records in place.  A torn tail is normal after a crash:
- * every whole record is given, the rest is stated in bytes.
+ * Files are read by the buffer, records in place.  A torn tail is normal after
+ * a crash: every whole record is given, the rest is stated in bytes.
  */
 /* SPDX-License-Identifier: Apache-2.0 */
 #ifndef DAEMON_CAPTURE_H

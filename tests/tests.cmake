@@ -81,6 +81,9 @@ else()
            WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
 endif()
 
+add_test(NAME style.files COMMAND tests/files.sh
+         WORKING_DIRECTORY ${PROJECT_SOURCE_DIR})
+
 # One hash for gcc and clang, -O0 and -O3.
 if(NOT SANITIZE)
   add_test(NAME golden.builds COMMAND tests/golden.sh

@@ -4,7 +4,8 @@
 #include "core/engine/engine_state.h"
 #include "core/math/real.h"
 
-/* --- memory ---------------------------------------------------------------- */
+/* --- memory ----------------------------------------------------------------
+ */
 
 static size_t largest_state(const struct rig *rig)
 {
@@ -20,7 +21,8 @@ static void lay_out(struct engine *e, struct arena *arena,
                     const struct rig *rig)
 {
     size_t n = (size_t)rig->n_sensors;
-    e->counts = arena_take(arena, sizeof *e->counts + n * sizeof(struct ledger));
+    e->counts =
+        arena_take(arena, sizeof *e->counts + n * sizeof(struct ledger));
     e->work = arena_take(arena, sizeof *e->work);
     e->ahead = arena_take(arena, largest_state(rig));
     e->local = arena_take(arena, n * sizeof *e->local);
@@ -30,11 +32,11 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->summary = arena_take(arena, n * sizeof *e->summary);
     e->quota = arena_take(arena, n * sizeof *e->quota);
     e->budget = arena_take(arena, n * sizeof *e->budget);
-    e->incoming = arena_take(arena, sizeof *e->incoming +
-                                        2 * READS_MAX * sizeof(double));
-    e->estimate = arena_take(arena, sizeof *e->estimate +
-                                        (UD_MAX + UD_SIZE(UD_MAX)) *
-                                            sizeof(double));
+    e->incoming =
+        arena_take(arena, sizeof *e->incoming + 2 * READS_MAX * sizeof(double));
+    e->estimate =
+        arena_take(arena, sizeof *e->estimate +
+                              (UD_MAX + UD_SIZE(UD_MAX)) * sizeof(double));
     roster_layout(&e->roster, rig, arena);
     size_t places = (size_t)rig->max_tracks + RIG_KINDS_MAX;
     e->touched = arena_take(arena, places * sizeof *e->touched);
@@ -83,11 +85,10 @@ struct engine *engine_init(void *memory, const struct rig *rig,
     number_sensors(e);
     for (int i = 0; i < rig->n_sensors; i++)
         e->quota[i] = rig_pending_quota(rig, &rig->sensor[i]);
-    size_t bytes = sizeof *e->counts +
-                   (size_t)rig->n_sensors * sizeof(struct ledger);
-    e->counts->head = (struct message){.bytes = (uint32_t)bytes,
-                                       .type = MESSAGE_COUNTS,
-                                       .kind = 0xffff};
+    size_t bytes =
+        sizeof *e->counts + (size_t)rig->n_sensors * sizeof(struct ledger);
+    e->counts->head = (struct message){
+        .bytes = (uint32_t)bytes, .type = MESSAGE_COUNTS, .kind = 0xffff};
     e->counts->n_sensors = (uint32_t)rig->n_sensors;
     return e;
 }
@@ -105,7 +106,8 @@ void engine_start(struct engine *e, int64_t line_ns)
     roster_start(&e->roster, line_ns);
 }
 
-/* --- release and settle ----------------------------------------------------- */
+/* --- release and settle -----------------------------------------------------
+ */
 
 static struct lay laying(struct engine *e)
 {
@@ -225,7 +227,8 @@ void engine_end(struct engine *e)
     e->n_touched = 0;
 }
 
-/* --- ticks ------------------------------------------------------------------- */
+/* --- ticks -------------------------------------------------------------------
+ */
 
 static void retire(struct engine *e, struct track *t)
 {
@@ -292,7 +295,8 @@ void engine_reanchor(struct engine *e, int64_t line_ns)
     }
 }
 
-/* --- accounts ---------------------------------------------------------------- */
+/* --- accounts ----------------------------------------------------------------
+ */
 
 struct counts *engine_counts(struct engine *e)
 {

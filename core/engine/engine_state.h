@@ -12,7 +12,7 @@
 struct seq_window {
     bool has_any;
     uint64_t greatest;
-    uint64_t seen;      /* bit k: greatest - k was seen                    */
+    uint64_t seen; /* bit k: greatest - k was seen                    */
 };
 
 struct engine {
@@ -27,16 +27,16 @@ struct engine {
     uint64_t steps;
     const char *refusal;
 
-    int16_t *local;     /* by sensor: its number within its track          */
-    int16_t *of_kind;   /* sensors in order of kind                        */
+    int16_t *local;   /* by sensor: its number within its track          */
+    int16_t *of_kind; /* sensors in order of kind                        */
     int first_of_kind[RIG_KINDS_MAX + 1];
-    bool *silent;       /* scratch of one judgement                        */
+    bool *silent; /* scratch of one judgement                        */
     struct seq_window *seq; /* by sensor                                   */
     struct sensor_summary *summary; /* scratch, by sensor                  */
-    int32_t *quota;     /* by sensor: pending measurements per track       */
-    double *budget;     /* by sensor: re-run steps left in this second     */
+    int32_t *quota; /* by sensor: pending measurements per track       */
+    double *budget; /* by sensor: re-run steps left in this second     */
 
-    int32_t *touched;   /* places with something new in this datagram      */
+    int32_t *touched; /* places with something new in this datagram      */
     int n_touched;
     struct step *incoming; /* scratch of one measurement                   */
     struct estimate *estimate; /* scratch of one message                   */

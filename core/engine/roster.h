@@ -19,11 +19,11 @@ struct roster_sender {
 
 struct roster {
     const struct rig *rig;
-    int n_places, n;        /* places, tracks                             */
-    struct track *track;    /* by place                                   */
-    int32_t *by_id;         /* places of the n tracks in order of id      */
-    uint64_t *key;          /* of those ids, in the same order            */
-    int n_fixed;            /* places of tracks of the file               */
+    int n_places, n;     /* places, tracks                             */
+    struct track *track; /* by place                                   */
+    int32_t *by_id;      /* places of the n tracks in order of id      */
+    uint64_t *key;       /* of those ids, in the same order            */
+    int n_fixed;         /* places of tracks of the file               */
     int n_senders;
     struct roster_sender sender[ROSTER_SENDERS_MAX];
 };

@@ -16,7 +16,8 @@ static void head_of(struct message *head, enum message_type type, size_t bytes,
         memcpy(head->track, t->id, sizeof head->track);
 }
 
-/* --- events ---------------------------------------------------------------- */
+/* --- events ----------------------------------------------------------------
+ */
 
 static struct event event_of(enum event_kind kind, const struct track *t,
                              int sensor, int64_t t_ns)
@@ -71,7 +72,8 @@ void speak_mark(struct engine *e, const struct measurement *m, int64_t t_ns)
     e->sink.say(e->sink.ctx, &ev.head);
 }
 
-/* --- live verdict ---------------------------------------------------------- */
+/* --- live verdict ----------------------------------------------------------
+ */
 
 /* What is heard of a track's sensors, by arrival. */
 struct hearing {
@@ -125,8 +127,13 @@ void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
         return;
     const struct step *last =
         t->n_laid > 0 ? track_step(t, t->n_laid - 1) : NULL;
-    struct verdict_input in = {&tip->kf,     sensor, e->silent, n, h.quiet_ns,
-                               tip->refused, last ? last->sensor : (int16_t)-1};
+    struct verdict_input in = {&tip->kf,
+                               sensor,
+                               e->silent,
+                               n,
+                               h.quiet_ns,
+                               tip->refused,
+                               last ? last->sensor : (int16_t)-1};
     if (is_coasting && e->now_ns > tip->kf.t_ns) {
         if (!h.has_changed && e->now_ns % COASTING_EVERY_NS != 0)
             return;
@@ -139,7 +146,8 @@ void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
         speak_verdict(e, t, &was);
 }
 
-/* --- estimates ------------------------------------------------------------- */
+/* --- estimates -------------------------------------------------------------
+ */
 
 static bool is_wanted(const struct engine *e, enum stream stream)
 {
@@ -211,7 +219,7 @@ static void judge_settled(struct engine *e, struct track *t,
         int64_t after = e->rig->sensor[sensor[i]].silent_after_ns;
         e->silent[i] = t_ns == INT64_MIN || s->t_ns - t_ns >= after;
     }
-    struct verdict_input in = {&st->kf, sensor,     e->silent, n,
+    struct verdict_input in = {&st->kf, sensor,      e->silent, n,
                                0,       st->refused, s->sensor};
     verdict_judge(t->kind, &in, &t->settled);
 }

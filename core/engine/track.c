@@ -1,7 +1,8 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "core/engine/track.h"
 
-/* --- memory ---------------------------------------------------------------- */
+/* --- memory ----------------------------------------------------------------
+ */
 
 static size_t round8(size_t bytes)
 {
@@ -92,11 +93,12 @@ void track_open(struct track *t, const struct rig *rig, int kind,
         t->free_state[t->n_free_states++] = t->n_states - 1 - i;
     memset(t->base, 0, t->state_bytes);
     for (int i = 0; i < size.n_watches; i++)
-        t->watch[i] = (struct watch){.heard_ns = now_ns,
-                                     .settled_t_ns = INT64_MIN};
+        t->watch[i] =
+            (struct watch){.heard_ns = now_ns, .settled_t_ns = INT64_MIN};
 }
 
-/* --- the ring -------------------------------------------------------------- */
+/* --- the ring --------------------------------------------------------------
+ */
 
 static int32_t *entry(const struct track *t, int i)
 {

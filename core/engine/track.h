@@ -38,11 +38,11 @@ enum step_flag {
  * the innovation variances (m_max values). */
 struct step {
     int64_t t_ns;
-    uint64_t seq, u_mark;   /* u_mark: 0, or a digest of the reported u   */
-    double nis;             /* at the prediction, before any widening     */
-    double nis_used;        /* of the update that was committed           */
-    int32_t state;          /* checkpoint after this step, -1 = none      */
-    uint16_t refused;       /* in a row, this one included                */
+    uint64_t seq, u_mark; /* u_mark: 0, or a digest of the reported u   */
+    double nis;           /* at the prediction, before any widening     */
+    double nis_used;      /* of the update that was committed           */
+    int32_t state;        /* checkpoint after this step, -1 = none      */
+    uint16_t refused;     /* in a row, this one included                */
     int16_t sensor;
     uint8_t has_seq, flags, dof, unused;
     double v[];
@@ -51,18 +51,18 @@ struct step {
 /* What a re-run depends on: lives in checkpoints, changes at measurements. */
 struct track_state {
     int64_t refused_since_ns;
-    uint16_t refused;       /* in a row                                   */
-    uint8_t widened;        /* times in a row without an accepted one     */
+    uint16_t refused; /* in a row                                   */
+    uint8_t widened;  /* times in a row without an accepted one     */
     uint8_t is_born;
-    uint8_t is_floating;    /* takes its time from the next measurement   */
+    uint8_t is_floating; /* takes its time from the next measurement   */
     struct kf kf;
 };
 
 /* What a track knows of one sensor. */
 struct watch {
-    int64_t heard_ns;       /* arrival of its last valid measurement      */
-    int64_t settled_t_ns;   /* stamp of its last settled one              */
-    int32_t pending;        /* its measurements that are not settled      */
+    int64_t heard_ns;     /* arrival of its last valid measurement      */
+    int64_t settled_t_ns; /* stamp of its last settled one              */
+    int32_t pending;      /* its measurements that are not settled      */
     bool is_silent;
     struct sensor_summary summary;
 };
@@ -78,39 +78,39 @@ struct track {
     char id[RIG_ID_SIZE];
     const struct rig_kind *kind;
     int kind_index;
-    int place;              /* in the engine's table                      */
-    int sender;             /* who brought it, -1 for tracks of the file  */
-    bool is_used;           /* the place holds a track                    */
-    bool is_confirmed;      /* of the file, or had its second measurement */
-    bool is_touched;        /* something new since the last release       */
-    int n_laid_before;      /* n_laid when it was touched                 */
+    int place;         /* in the engine's table                      */
+    int sender;        /* who brought it, -1 for tracks of the file  */
+    bool is_used;      /* the place holds a track                    */
+    bool is_confirmed; /* of the file, or had its second measurement */
+    bool is_touched;   /* something new since the last release       */
+    int n_laid_before; /* n_laid when it was touched                 */
 
     int capacity, head, n, n_settled, n_laid;
-    int scratch_at;         /* scratch is the state after so many laid
-                               steps, -1 = it is not                     */
-    int32_t *order;         /* ring of slots in canonical order           */
+    int scratch_at; /* scratch is the state after so many laid
+                       steps, -1 = it is not                     */
+    int32_t *order; /* ring of slots in canonical order           */
     int32_t *free_slot;
     int n_free_slots;
-    char *slots;            /* capacity x step_bytes                      */
+    char *slots; /* capacity x step_bytes                      */
     size_t step_bytes;
     int m_max;
 
     int n_states, n_free_states, stride;
     int32_t *free_state;
-    char *states;           /* checkpoints, n_states x state_bytes        */
+    char *states; /* checkpoints, n_states x state_bytes        */
     size_t state_bytes;
     struct track_state *base;    /* ground while the ring has none        */
     struct track_state *scratch; /* newest laid state without checkpoint  */
     struct track_state *final;   /* newest settled state without one      */
 
-    int64_t greatest_t_ns;  /* of any measurement taken in                */
+    int64_t greatest_t_ns; /* of any measurement taken in                */
     bool has_greatest;
     uint64_t n_live, n_final; /* messages said                            */
     struct kf_total total;
     uint64_t n_used;
-    int n_silent;           /* of its sensors                             */
+    int n_silent; /* of its sensors                             */
     struct judged live, settled;
-    struct watch *watch;    /* by local sensor number                     */
+    struct watch *watch; /* by local sensor number                     */
 };
 
 /* Sizes of the kinds that a place must fit. */
@@ -144,8 +144,7 @@ static inline double *step_z(struct step *s)
 }
 
 /* Where `s` belongs; *is_duplicate if its equal stands there. */
-int track_find(const struct track *t, const struct step *s,
-               bool *is_duplicate);
+int track_find(const struct track *t, const struct step *s, bool *is_duplicate);
 
 /* Puts a copy of *s in at i; false when the ring is full. */
 bool track_insert(struct track *t, int i, const struct step *s);
@@ -154,7 +153,7 @@ bool track_insert(struct track *t, int i, const struct step *s);
 struct lay {
     const struct rig *rig;
     struct kf_work *work;
-    uint64_t *steps;        /* counted up by every filter step            */
+    uint64_t *steps; /* counted up by every filter step            */
 };
 
 /* Lays steps until the first with t > until_ns; returns how many. */

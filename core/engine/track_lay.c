@@ -2,11 +2,11 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "core/engine/track.h"
 
-/* --- laying ---------------------------------------------------------------- */
+/* --- laying ----------------------------------------------------------------
+ */
 
 /* The newest checkpoint before step i, and the step after it. */
-static const struct track_state *ground(const struct track *t, int i,
-                                        int *from)
+static const struct track_state *ground(const struct track *t, int i, int *from)
 {
     for (int k = i - 1; k >= 0; k--) {
         const struct step *s = track_step(t, k);
@@ -24,9 +24,9 @@ static void take_time(struct track *t, const struct track_state *from,
                       struct step *s)
 {
     const struct rig_kind *kind = t->kind;
-    bool is_reborn = kind->is_prefix && from->is_born &&
-                     s->t_ns - from->kf.t_ns >
-                         kind->lost_after_ns + TRACK_RETIRE_NS;
+    bool is_reborn =
+        kind->is_prefix && from->is_born &&
+        s->t_ns - from->kf.t_ns > kind->lost_after_ns + TRACK_RETIRE_NS;
     if (!from->is_born || is_reborn) {
         memset(to, 0, sizeof *to);
         to->is_born = 1;
@@ -138,7 +138,8 @@ int track_lay(struct track *t, const struct lay *lay, int64_t until_ns)
             track_free_checkpoint(t, s);
         else if (s->state < 0)
             s->state = t->free_state[--t->n_free_states];
-        struct track_state *to = is_checkpoint ? track_checkpoint(t, s) : t->scratch;
+        struct track_state *to =
+            is_checkpoint ? track_checkpoint(t, s) : t->scratch;
         lay_step(t, lay, tip, to, s);
         if (is_checkpoint)
             since = 0;
@@ -159,7 +160,8 @@ const struct track_state *track_tip(const struct track *t)
     return s->state >= 0 ? track_checkpoint(t, s) : t->scratch;
 }
 
-/* --- settling -------------------------------------------------------------- */
+/* --- settling --------------------------------------------------------------
+ */
 
 struct step *track_settle(struct track *t, const struct lay *lay,
                           const struct track_state **state)

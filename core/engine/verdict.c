@@ -4,8 +4,7 @@
 static void because(struct judged *j, enum reason_code code, int subject)
 {
     if (j->n_why < MESSAGE_REASONS_MAX)
-        j->why[j->n_why++] =
-            (struct reason){(uint8_t)code, (int16_t)subject};
+        j->why[j->n_why++] = (struct reason){(uint8_t)code, (int16_t)subject};
 }
 
 /* States whose u is above the limit; the limits are good's or lost's. */

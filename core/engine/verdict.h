@@ -18,13 +18,13 @@
 enum { VERDICT_REFUSED = 3 };
 
 struct verdict_input {
-    const struct kf *kf;      /* the estimate, perhaps predicted to now    */
-    const int16_t *sensor;    /* the track's sensors, n_sensors            */
-    const bool *is_silent;    /* by local number                           */
+    const struct kf *kf;   /* the estimate, perhaps predicted to now    */
+    const int16_t *sensor; /* the track's sensors, n_sensors            */
+    const bool *is_silent; /* by local number                           */
     int n_sensors;
-    int64_t quiet_ns;         /* since anything at all was heard           */
-    uint16_t refused;         /* in a row                                  */
-    int16_t last_sensor;      /* whose measurement was the last, -1 none   */
+    int64_t quiet_ns;    /* since anything at all was heard           */
+    uint16_t refused;    /* in a row                                  */
+    int16_t last_sensor; /* whose measurement was the last, -1 none   */
 };
 
 /* Judges; *j keeps is_started from call to call and gets verdict and why. */

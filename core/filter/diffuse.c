@@ -41,8 +41,8 @@ static void eliminate(struct kf *f, const double *g, int p)
         for (int i = 0; i < n && k != p; i++) {
             double was = B[n * k + i], part = B[n * p + i] * share;
             double left = was - part;
-            bool is_rounding = real_abs(left) <=
-                               1e-13 * (real_abs(was) + real_abs(part));
+            bool is_rounding =
+                real_abs(left) <= 1e-13 * (real_abs(was) + real_abs(part));
             B[n * k + i] = is_rounding ? 0 : left;
         }
     }
@@ -61,20 +61,20 @@ void diffuse_determine(struct kf_work *w, struct kf *f, const double *h,
     int n = f->n, width = n + 1;
     double *x = kf_x(f), *ud = kf_ud(f), *K = w->b;
     for (int i = 0; i < n; i++)
-        K[i] = kf_B(f)[n * p + i] / g[p];            /* K = b / (h b)     */
+        K[i] = kf_B(f)[n * p + i] / g[p]; /* K = b / (h b)     */
     for (int j = 0; j < n; j++) {
         double hU = h[j];
         for (int i = 0; i < j; i++)
             hU += h[i] * ud[UD_AT(i, j)];
         for (int i = 0; i < n; i++) {
             double U = i < j ? ud[UD_AT(i, j)] : i == j ? 1 : 0;
-            w->W[i * width + j] = U - K[i] * hU;     /* (I - K h) U       */
+            w->W[i * width + j] = U - K[i] * hU; /* (I - K h) U       */
         }
         w->w[j] = ud[UD_AT(j, j)];
     }
     for (int i = 0; i < n; i++) {
         w->W[i * width + n] = K[i];
-        x[i] += K[i] * y;                            /* x = x + K y       */
+        x[i] += K[i] * y; /* x = x + K y       */
     }
     w->w[n] = r;
     ud_gram_schmidt(n, width, w->W, w->w, ud);

@@ -29,14 +29,15 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
     }
 }
 
-/* --- likelihood ------------------------------------------------------------- */
+/* --- likelihood -------------------------------------------------------------
+ */
 
 double kf_loglik(const struct kf_seen *seen)
 {
     double sum = seen->nis + seen->dof * REAL_LN_2PI;
     for (int i = 0; i < seen->dof; i++)
         sum += real_log(seen->s[i]);
-    return -sum / 2;                                 /* log N(y; 0, S)    */
+    return -sum / 2; /* log N(y; 0, S)    */
 }
 
 void kf_total_begin(struct kf_total *t)
@@ -67,18 +68,18 @@ void kf_total_add(struct kf_total *t, int dof, double nis, const double *s)
 
 double kf_total_loglik(const struct kf_total *t)
 {
-    double log_det =
-        real_log(t->product) + (double)t->doublings * REAL_LN_2;
+    double log_det = real_log(t->product) + (double)t->doublings * REAL_LN_2;
     return -(t->nis + (double)t->dof * REAL_LN_2PI + log_det) / 2;
 }
 
-/* --- recovery -------------------------------------------------------------- */
+/* --- recovery --------------------------------------------------------------
+ */
 
 void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
 {
     for (int i = 0; i < kind->n; i++)
         w->b[i] = kind->state[i].is_constant ? 1 : 10;
-    ud_scale(kind->n, kf_ud(f), w->b);               /* P x 100           */
+    ud_scale(kind->n, kf_ud(f), w->b); /* P x 100           */
 }
 
 static const struct block *block_of(const struct rig_kind *kind, int state)
@@ -94,10 +95,11 @@ void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
     int n = kind->n, n_kept = 0;
     double *P = w->W, *x = kf_x(f), *B = kf_B(f);
     ud_covariance(n, kf_ud(f), P);
-    for (int k = 0; k < f->n_free; k++) {            /* constants not known */
+    for (int k = 0; k < f->n_free; k++) { /* constants not known */
         bool is_kept = false;
         for (int i = 0; i < n; i++) {
-            w->B[n * n_kept + i] = kind->state[i].is_constant ? B[n * k + i] : 0;
+            w->B[n * n_kept + i] =
+                kind->state[i].is_constant ? B[n * k + i] : 0;
             is_kept = is_kept || w->B[n * n_kept + i] != 0;
         }
         n_kept += is_kept;

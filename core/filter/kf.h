@@ -63,9 +63,9 @@ void kf_predict(const struct rig_kind *kind, struct kf_work *w,
 
 /* What one update saw. */
 struct kf_seen {
-    int dof;            /* components that were judged: read, not diffuse  */
-    int n_determined;   /* components used up by a start from data         */
-    double nis;         /* y' S^-1 y at the prediction                     */
+    int dof;             /* components that were judged: read, not diffuse  */
+    int n_determined;    /* components used up by a start from data         */
+    double nis;          /* y' S^-1 y at the prediction                     */
     double s[READS_MAX]; /* conditional innovation variances: |S| = product */
     double y[READS_MAX]; /* innovation of each component, given those before it
                             in the list; NaN if not read                   */
@@ -86,7 +86,7 @@ double kf_loglik(const struct kf_seen *seen);
 
 /* Many of them summed: |S| is multiplied up and its logarithm taken once. */
 struct kf_total {
-    double nis, product;   /* sum of NIS; |S| without its doublings          */
+    double nis, product; /* sum of NIS; |S| without its doublings          */
     int64_t doublings, dof;
 };
 

@@ -43,8 +43,8 @@ static void pass(struct kf_work *w, struct kf *f, const struct sight *s,
             continue;
         double gain = y / S;
         for (int k = 0; k < n; k++)
-            x[k] += w->b[k] * gain;                  /* x = x + K y       */
-        seen->nis += y * gain;                       /* y' S^-1 y         */
+            x[k] += w->b[k] * gain; /* x = x + K y       */
+        seen->nis += y * gain;      /* y' S^-1 y         */
         seen->s[seen->dof++] = S;
     }
 }
@@ -151,17 +151,17 @@ UNROLLED bool linear(const int n, struct kf *f, const struct sight *s,
             y -= combine(n, row, x, h);
             S = ud_look(n, ud, h, s->r[i], F, V);
         }
-        seen->y[i] = y;                              /* y = z - H x       */
+        seen->y[i] = y; /* y = z - H x       */
         if (!(S > 0))
             continue;
         double over = 1 / S, gain = y * over;
-        nis += y * gain;                             /* y' S^-1 y         */
+        nis += y * gain; /* y' S^-1 y         */
         seen->s[dof++] = S;
         if (gate && m == 1 && !(nis <= gate[1]))
             break;
         ud_correct(n, ud, F, V, s->r[i], over, b);
         for (int k = 0; k < n; k++)
-            x[k] += b[k] * gain;                     /* x = x + K y       */
+            x[k] += b[k] * gain; /* x = x + K y       */
     }
     seen->n_determined = 0;
     seen->dof = dof;

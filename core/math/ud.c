@@ -41,7 +41,7 @@ void ud_covariance(int n, const double *ud, double *P)
             for (int k = j + 1; k < n; k++)
                 sum += ud[UD_AT(i, k)] * ud[UD_AT(k, k)] * ud[UD_AT(j, k)];
             P[i * n + j] = sum;
-            P[j * n + i] = sum;                  /* P = U D U'            */
+            P[j * n + i] = sum; /* P = U D U'            */
         }
     }
 }
@@ -75,14 +75,14 @@ void ud_gram_schmidt(int n, int k, double *W, const double *w, double *ud)
     for (int j = n - 1; j >= 0; j--) {
         double *Wj = W + j * k, *col = ud + UD_AT(0, j), d = 0;
         for (int l = 0; l < k; l++)
-            d += Wj[l] * (w[l] * Wj[l]);         /* D_j = W_j w W_j'      */
+            d += Wj[l] * (w[l] * Wj[l]); /* D_j = W_j w W_j'      */
         col[j] = d;
         double inverse = d > UD_PIVOT_MIN ? 1 / d : 0;
         for (int i = 0; i < j; i++) {
             double *Wi = W + i * k, u = 0;
             for (int l = 0; l < k; l++)
                 u += Wi[l] * (w[l] * Wj[l]);
-            u *= inverse;                        /* U_ij = W_i w W_j' / D_j */
+            u *= inverse; /* U_ij = W_i w W_j' / D_j */
             col[i] = u;
             for (int l = 0; l < k; l++)
                 Wi[l] -= u * Wj[l];
@@ -105,11 +105,11 @@ double ud_distance(int n, const double *ud, const double *d, double *work)
     for (int j = n - 1; j >= 0; j--) {
         double y = d[j];
         for (int k = j + 1; k < n; k++)
-            y -= ud[UD_AT(j, k)] * work[k];      /* U y = d               */
+            y -= ud[UD_AT(j, k)] * work[k]; /* U y = d               */
         work[j] = y;
         double D = ud[UD_AT(j, j)];
         if (D > UD_PIVOT_MIN)
-            sum += y * y / D;                    /* y' D^-1 y             */
+            sum += y * y / D; /* y' D^-1 y             */
         else if (real_abs(y) > 1e-12 * real_abs(d[j]))
             return 1e300;
     }

@@ -103,6 +103,6 @@ void block_move(const struct block *b, const struct transition *t, double *x)
         double sum = 0;
         for (int j = i; j < b->n; j++)
             sum += Phi[j] * was[j];
-        x0[i] = m + sum;                         /* x = m + Phi (x - m)   */
+        x0[i] = m + sum; /* x = m + Phi (x - m)   */
     }
 }

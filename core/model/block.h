@@ -48,8 +48,7 @@ int block_states(enum block_model model);
 
 /* Fills the block's part of *t for dt_s >= 0.  dt_s = 0 gives identity and
  * zero noise. */
-void block_transition(const struct block *b, double dt_s,
-                      struct transition *t);
+void block_transition(const struct block *b, double dt_s, struct transition *t);
 
 /* x of this block moved over dt; x points at the whole layout's states. */
 void block_move(const struct block *b, const struct transition *t, double *x);

@@ -24,14 +24,14 @@ enum mark_kind { MARK_NONE, MARK_START, MARK_STOP, MARK_ZERO, MARK_NOTE };
 /* One element of a datagram, decoded but not yet believed. */
 struct measurement {
     struct text sensor, track;
-    enum mark_kind mark;        /* not MARK_NONE: a run mark, no reading  */
-    struct text name, note;     /* of a mark                              */
+    enum mark_kind mark;    /* not MARK_NONE: a run mark, no reading  */
+    struct text name, note; /* of a mark                              */
     bool has_t, has_seq;
-    int64_t t_ns;               /* stamp, UTC since 1970                  */
+    int64_t t_ns; /* stamp, UTC since 1970                  */
     uint64_t seq;
-    int n_z;                    /* components of z; 0: `z` was null       */
-    double z[READS_MAX];        /* NaN = no reading of that component     */
-    int n_u;                    /* reported u: how many, 0 = none         */
+    int n_z;             /* components of z; 0: `z` was null       */
+    double z[READS_MAX]; /* NaN = no reading of that component     */
+    int n_u;             /* reported u: how many, 0 = none         */
     double u[READS_MAX];
     bool has_cov;
 };
@@ -153,9 +153,9 @@ struct reason {
 enum message_type { MESSAGE_ESTIMATE, MESSAGE_EVENT, MESSAGE_COUNTS };
 
 struct message {
-    uint32_t bytes;        /* whole message, a multiple of 8              */
+    uint32_t bytes; /* whole message, a multiple of 8              */
     uint16_t type;
-    uint16_t kind;         /* the track's kind, or 0xffff                 */
+    uint16_t kind;           /* the track's kind, or 0xffff                 */
     char track[RIG_ID_SIZE]; /* "" where no track is meant                */
 };
 
@@ -177,7 +177,7 @@ struct estimate {
     uint8_t accepted;
     uint8_t stream, verdict, n_why, n_states;
     struct reason why[MESSAGE_REASONS_MAX];
-    double v[];            /* x: n_states, then ud: UD_SIZE(n_states)     */
+    double v[]; /* x: n_states, then ud: UD_SIZE(n_states)     */
 };
 
 #define EVENTS(X)                                                              \
@@ -204,10 +204,10 @@ const char *event_text(enum event_kind e);
 struct event {
     struct message head;
     int64_t t_ns;
-    uint8_t event;         /* enum event_kind                             */
-    uint8_t mark;          /* enum mark_kind, for EVENT_MARK              */
-    uint8_t verdict, was;  /* for EVENT_VERDICT                           */
-    int16_t sensor;        /* -1: none                                    */
+    uint8_t event;        /* enum event_kind                             */
+    uint8_t mark;         /* enum mark_kind, for EVENT_MARK              */
+    uint8_t verdict, was; /* for EVENT_VERDICT                           */
+    int16_t sensor;       /* -1: none                                    */
     uint8_t n_why;
     struct reason why[MESSAGE_REASONS_MAX];
     char name[RIG_ID_SIZE]; /* of a mark                                  */
@@ -227,7 +227,7 @@ struct counts {
 
 /* Who sent a datagram. */
 struct sender {
-    uint8_t family;        /* 4 or 6                                      */
+    uint8_t family; /* 4 or 6                                      */
     uint8_t address[16];
     uint16_t port;
 };

@@ -56,7 +56,8 @@ size_t wire_summary_track(const struct rig *rig, const struct track_summary *t,
                           bool is_first, char *buf, size_t size);
 size_t wire_summary_end(char *buf, size_t size);
 
-/* "2001-09-09T01:46:40.000000000Z"; buf holds at least 31 bytes.  Returns 30. */
+/* "2001-09-09T01:46:40.000000000Z"; buf holds at least 31 bytes.  Returns 30.
+ */
 size_t wire_print_time(int64_t t_ns, char *buf);
 
 /* Shortest text that reads back as x ("0.1", "1e+22"); "null" if x is not

@@ -74,16 +74,16 @@ struct pcap_record {
     struct sender from, to;
     const uint8_t *payload;
     size_t len;
-    int64_t line_ns;       /* control records, as they were written       */
+    int64_t line_ns; /* control records, as they were written       */
     uint64_t n;
     struct text build, rig, text; /* still with JSON escapes, in payload  */
 };
 
 enum pcap_result {
-    PCAP_RECORD,           /* *r is filled                                */
-    PCAP_SKIP,             /* a whole record, but no UDP datagram of ours:
-                              another protocol, a fragment, truncated     */
-    PCAP_TORN              /* the bytes end, or make no sense, here       */
+    PCAP_RECORD, /* *r is filled                                */
+    PCAP_SKIP,   /* a whole record, but no UDP datagram of ours:
+                    another protocol, a fragment, truncated     */
+    PCAP_TORN    /* the bytes end, or make no sense, here       */
 };
 
 /* Reads the record at `bytes`; *used = its size unless PCAP_TORN.  Only

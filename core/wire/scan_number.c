@@ -8,10 +8,9 @@
 enum { TOKEN_MAX = 400 };
 
 /* Powers of ten that a double holds exactly. */
-static const double exact_ten[] = {1e0,  1e1,  1e2,  1e3,  1e4,  1e5,
-                                   1e6,  1e7,  1e8,  1e9,  1e10, 1e11,
-                                   1e12, 1e13, 1e14, 1e15, 1e16, 1e17,
-                                   1e18, 1e19, 1e20, 1e21, 1e22};
+static const double exact_ten[] = {
+    1e0,  1e1,  1e2,  1e3,  1e4,  1e5,  1e6,  1e7,  1e8,  1e9,  1e10, 1e11,
+    1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22};
 
 /* [-]digits[.digits][e[+-]digits] as mantissa and power of ten; false when
  * it has another shape or more digits than a double's integers. */

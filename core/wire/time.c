@@ -27,8 +27,7 @@ static int64_t days_from_civil(int y, int m, int d)
 
 static int month_days(int y, int m)
 {
-    static const int days[] = {31, 28, 31, 30, 31, 30,
-                               31, 31, 30, 31, 30, 31};
+    static const int days[] = {31, 28, 31, 30, 31, 30, 31, 31, 30, 31, 30, 31};
     bool is_leap = (y % 4 == 0 && y % 100 != 0) || y % 400 == 0;
     return days[m - 1] + (m == 2 && is_leap);
 }
@@ -77,8 +76,8 @@ bool wire_parse_time(const char *s, size_t len, int64_t *t_ns)
     }
     if (!offset(s + at, len - at, &east_s))
         return false;
-    int64_t seconds = days_from_civil(year, month, day) * 86400 +
-                      h * 3600 + m * 60 + second - east_s;
+    int64_t seconds = days_from_civil(year, month, day) * 86400 + h * 3600 +
+                      m * 60 + second - east_s;
     *t_ns = seconds * SECOND_NS + ns;
     return true;
 }

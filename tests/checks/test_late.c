@@ -96,7 +96,8 @@ static struct lane *lane_new(double q, const double *x0, const double *var0,
     l->rig.horizon_ns = horizon_ns;
     size_t bytes = run_bytes(&l->rig);
     l->memory = aligned_alloc(64, bytes);
-    l->run = run_init(l->memory, bytes, &l->rig, (struct message_sink){say, l, NULL});
+    l->run = run_init(l->memory, bytes, &l->rig,
+                      (struct message_sink){say, l, NULL});
     ck_assert_ptr_nonnull(l->run);
     run_start(l->run, ORIGIN_NS);
     return l;

@@ -39,8 +39,8 @@ static void say(void *ctx, const struct message *m)
         d->on_message(d->ctx, m);
     if (!d->keeps_text)
         return;
-    size_t len = wire_encode(&d->settings->rig, m, WIRE_JSON, d->line,
-                             d->line_size);
+    size_t len =
+        wire_encode(&d->settings->rig, m, WIRE_JSON, d->line, d->line_size);
     ck_assert_uint_gt(len, 0);
     append(&d->all, &d->n_all, d->line, len);
     if (stream == STREAM_LIVE)
@@ -61,7 +61,8 @@ void drive_init(struct drive *d, const char *rig_text)
     const struct rig *rig = &d->settings->rig;
     size_t bytes = run_bytes(rig);
     d->memory = aligned_alloc(64, bytes);
-    d->run = run_init(d->memory, bytes, rig, (struct message_sink){say, d, NULL});
+    d->run =
+        run_init(d->memory, bytes, rig, (struct message_sink){say, d, NULL});
     ck_assert_ptr_nonnull(d->run);
     d->line_size = wire_message_bound(rig);
     d->line = malloc(d->line_size);

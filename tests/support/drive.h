@@ -14,11 +14,11 @@ struct drive {
     struct settings *settings;
     struct run *run;
     void *memory;
-    char *line;          /* scratch of one encoded message                */
+    char *line; /* scratch of one encoded message                */
     size_t line_size;
     char *live, *settled, *all; /* what was said, as JSON lines           */
     size_t n_live, n_settled, n_all, size;
-    bool keeps_text;     /* false: count only                             */
+    bool keeps_text;         /* false: count only                             */
     uint64_t n_estimates[2]; /* by stream                                 */
     const struct estimate *last; /* newest estimate of `stream_kept`       */
     void (*on_message)(void *ctx, const struct message *m);

@@ -34,8 +34,8 @@ void folder_remove(const char *path)
 
 static void redirect(const char *path, int to)
 {
-    int fd = open(path ? path : "/dev/null", O_WRONLY | O_CREAT | O_TRUNC,
-                  0644);
+    int fd =
+        open(path ? path : "/dev/null", O_WRONLY | O_CREAT | O_TRUNC, 0644);
     if (fd >= 0)
         dup2(fd, to);
 }
@@ -81,18 +81,12 @@ struct daemon_ports daemon_start(const char *rig, const char *folder)
     snprintf(log, sizeof log, "%s/daemon.log", folder);
     snprintf(capture, sizeof capture, "capture.folder=\"%s/captures\"", folder);
     unlink(ports);
-    char *argv[] = {DAEMON_PATH,
-                    (char *)(size_t)rig,
-                    "--set",
-                    "receive.udp=\"127.0.0.1:0\"",
-                    "--set",
-                    "serve.tcp=\"127.0.0.1:0\"",
-                    "--set",
-                    capture,
-                    "--set",
-                    "capture.floor=\"1 MiB\"",
-                    "--port-file",
-                    ports,
+    char *argv[] = {DAEMON_PATH,   (char *)(size_t)rig,
+                    "--set",       "receive.udp=\"127.0.0.1:0\"",
+                    "--set",       "serve.tcp=\"127.0.0.1:0\"",
+                    "--set",       capture,
+                    "--set",       "capture.floor=\"1 MiB\"",
+                    "--port-file", ports,
                     NULL};
     d.pid = process_start(argv, NULL, log);
     for (int i = 0; access(ports, R_OK) != 0; i++) {
@@ -162,8 +156,8 @@ void lines_said(char *text)
         end = end ? end + 1 : line + strlen(line);
         bool is_kept = true;
         for (int i = 0; i < 5; i++)
-            is_kept = is_kept &&
-                      strncmp(line, left_out[i], strlen(left_out[i])) != 0;
+            is_kept =
+                is_kept && strncmp(line, left_out[i], strlen(left_out[i])) != 0;
         if (!is_kept)
             continue;
         memmove(to, line, (size_t)(end - line));

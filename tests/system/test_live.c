@@ -1,5 +1,6 @@
 /* Replay is live: what the running daemon said over TCP is what a replay of
- * its capture says, byte for byte.  The long form (CAMPAIGN=live) takes 60 s. */
+ * its capture says, byte for byte.  The long form (CAMPAIGN=live) takes 60 s.
+ */
 /* SPDX-License-Identifier: Apache-2.0 */
 #include <pthread.h>
 #include <signal.h>
@@ -61,9 +62,14 @@ START_TEST(a_replay_of_the_capture_says_what_was_said_live)
     usleep(300000);
 
     snprintf(to, sizeof to, "127.0.0.1:%d", d.udp);
-    char *rehearse[] = {arg(TOOL_PATH), arg("rehearse"),
-                        arg("tests/data/rigs/fast.json"), arg("--to"), to,
-                        arg("--lasts"), arg(is_long ? "60 s" : "8 s"), NULL};
+    char *rehearse[] = {arg(TOOL_PATH),
+                        arg("rehearse"),
+                        arg("tests/data/rigs/fast.json"),
+                        arg("--to"),
+                        to,
+                        arg("--lasts"),
+                        arg(is_long ? "60 s" : "8 s"),
+                        NULL};
     ck_assert_int_eq(process_run(rehearse, NULL, log), 0);
     usleep(700000);
     kill(d.pid, SIGTERM);
@@ -71,10 +77,17 @@ START_TEST(a_replay_of_the_capture_says_what_was_said_live)
     pthread_join(thread, NULL);
     close(l.fd);
 
-    char *replay[] = {arg(TOOL_PATH), arg("replay"),
-                      arg("tests/data/rigs/fast.json"), d.capture,
-                      arg("--stream"), arg("both"), arg("--out"), again,
-                      arg("--port"), to + strlen("127.0.0.1:"), NULL};
+    char *replay[] = {arg(TOOL_PATH),
+                      arg("replay"),
+                      arg("tests/data/rigs/fast.json"),
+                      d.capture,
+                      arg("--stream"),
+                      arg("both"),
+                      arg("--out"),
+                      again,
+                      arg("--port"),
+                      to + strlen("127.0.0.1:"),
+                      NULL};
     ck_assert_int_eq(process_run(replay, NULL, log), 0);
 
     char *a = file_read(live, NULL), *b = file_read(again, NULL);

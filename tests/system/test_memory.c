@@ -30,8 +30,8 @@ static size_t printed_bytes(const char *folder)
 {
     char out[128];
     snprintf(out, sizeof out, "%s/check.json", folder);
-    char *argv[] = {arg(TOOL_PATH), arg("check"),
-                    arg("config/rigs/rafts.json"), arg("--json"), NULL};
+    char *argv[] = {arg(TOOL_PATH), arg("check"), arg("config/rigs/rafts.json"),
+                    arg("--json"), NULL};
     ck_assert_int_eq(process_run(argv, out, NULL), 0);
     char *text = file_read(out, NULL);
     cJSON *root = cJSON_Parse(text);
@@ -59,17 +59,21 @@ START_TEST(an_hour_takes_the_memory_that_check_prints)
     char folder[64], pcap[128];
     folder_make(folder, sizeof folder);
     snprintf(pcap, sizeof pcap, "%s/hour.pcap", folder);
-    char *rehearse[] = {arg(TOOL_PATH), arg("rehearse"),
-                        arg("config/rigs/rafts.json"), arg("--lasts"),
-                        arg("1 h"), arg("--out"), pcap, NULL};
+    char *rehearse[] = {arg(TOOL_PATH),
+                        arg("rehearse"),
+                        arg("config/rigs/rafts.json"),
+                        arg("--lasts"),
+                        arg("1 h"),
+                        arg("--out"),
+                        pcap,
+                        NULL};
     ck_assert_int_eq(process_run(rehearse, NULL, NULL), 0);
 
     struct settings *s;
     struct problems problems;
     problems_init(&problems);
-    ck_assert_int_eq(settings_load(&s, "config/rigs/rafts.json", NULL, 0,
-                                   &problems),
-                     ST_OK);
+    ck_assert_int_eq(
+        settings_load(&s, "config/rigs/rafts.json", NULL, 0, &problems), ST_OK);
     problems_fini(&problems);
     size_t bytes = run_bytes(&s->rig);
     ck_assert_uint_eq(bytes, printed_bytes(folder));
@@ -78,9 +82,9 @@ START_TEST(an_hour_takes_the_memory_that_check_prints)
     size_t len;
     uint64_t n_estimates = 0, n = 0;
     char *memory = before_a_wall(bytes, &mapping, &len);
-    struct run *run = run_init(memory, bytes, &s->rig,
-                               (struct message_sink){count, &n_estimates,
-                                                     NULL});
+    struct run *run =
+        run_init(memory, bytes, &s->rig,
+                 (struct message_sink){count, &n_estimates, NULL});
     struct capture *c;
     struct pcap_record r;
     ck_assert_int_eq(capture_open(&c, pcap, NULL), ST_OK);

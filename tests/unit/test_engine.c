@@ -37,7 +37,8 @@ static const char three_axes[] =
     "   \"reads\": [\"x\", \"y\", \"z\"], \"unit\": \"m\","
     "   \"u\": \"0.01 m\", \"rate\": \"100 Hz\"}}}";
 
-/* --- cost ------------------------------------------------------------------- */
+/* --- cost -------------------------------------------------------------------
+ */
 
 static void feed_one(struct drive *d, bool is_wide, int64_t t_ns, int64_t a_ns)
 {
@@ -92,7 +93,8 @@ START_TEST(one_late_arrival_in_a_full_ring_costs_its_depth_plus_8)
 }
 END_TEST
 
-/* --- allocation -------------------------------------------------------------- */
+/* --- allocation --------------------------------------------------------------
+ */
 
 /* The loader's own allocations do not count: only what happens in between. */
 static volatile bool is_counting; /* the compiler knows malloc: tell it */
@@ -157,7 +159,8 @@ START_TEST(a_million_measurements_allocate_nothing)
 }
 END_TEST
 
-/* --- honest u ---------------------------------------------------------------- */
+/* --- honest u ----------------------------------------------------------------
+ */
 
 struct truth {
     double x, v;
@@ -201,8 +204,9 @@ static int covered(const char *rig_text, double q)
         for (int i = 1; i <= 500; i++) {
             int64_t t_ns = T0 + (int64_t)i * 20 * MS;
             move(&r, &s, q, 0.02);
-            drive_feed(&d, t_ns, "{\"sensor\":\"laser\",\"z\":%.9f,"
-                                 "\"ns\":%lld}",
+            drive_feed(&d, t_ns,
+                       "{\"sensor\":\"laser\",\"z\":%.9f,"
+                       "\"ns\":%lld}",
                        s.x + 0.01 * random_normal(&r), (long long)t_ns);
         }
         double u = sqrt(ud_variance(2, last.e.v + 2, 1));
@@ -228,7 +232,8 @@ START_TEST(with_q_ten_times_wrong_two_u_fail_to_hold_the_truth)
 }
 END_TEST
 
-/* --- recovery ------------------------------------------------------------------ */
+/* --- recovery
+ * ------------------------------------------------------------------ */
 
 START_TEST(an_emergency_stop_is_followed_again)
 {
@@ -253,15 +258,16 @@ START_TEST(an_emergency_stop_is_followed_again)
         double z = x + 0.01 * random_normal(&r);
         if (random_below(&r, 100) == 0)
             z += 0.3;
-        drive_feed(&d, t_ns, "{\"sensor\":\"laser\",\"z\":%.6f,\"ns\":%lld}",
-                   z, (long long)t_ns);
+        drive_feed(&d, t_ns, "{\"sensor\":\"laser\",\"z\":%.6f,\"ns\":%lld}", z,
+                   (long long)t_ns);
     }
     ck_assert_double_le(fabs(last.e.v[0] - x), 0.05);
     drive_fini(&d);
 }
 END_TEST
 
-/* --- verdicts ------------------------------------------------------------------ */
+/* --- verdicts
+ * ------------------------------------------------------------------ */
 
 START_TEST(silence_makes_the_verdict_coast_and_then_lose)
 {
@@ -284,7 +290,8 @@ START_TEST(silence_makes_the_verdict_coast_and_then_lose)
 }
 END_TEST
 
-/* --- the door ------------------------------------------------------------------ */
+/* --- the door
+ * ------------------------------------------------------------------ */
 
 START_TEST(every_refusal_has_its_own_account)
 {
@@ -332,8 +339,8 @@ Suite *suite(void)
     Suite *s = suite_create("engine");
     TCase *t = tcase_create("engine");
     tcase_set_timeout(t, 200);
-    tcase_add_loop_test(
-        t, a_late_arrival_k_deep_costs_at_most_k_plus_8_steps, 0, 2);
+    tcase_add_loop_test(t, a_late_arrival_k_deep_costs_at_most_k_plus_8_steps,
+                        0, 2);
     tcase_add_loop_test(
         t, one_late_arrival_in_a_full_ring_costs_its_depth_plus_8, 0, 20);
     tcase_add_test(t, a_million_measurements_allocate_nothing);

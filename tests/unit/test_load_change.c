@@ -21,8 +21,8 @@ static void expect_refusal(const char *path, const char *value,
     struct settings *s;
     struct problems p;
     problems_init(&p);
-    status st = settings_parse(&s, "rig.json", text, strlen(text), &change, 1,
-                               &p);
+    status st =
+        settings_parse(&s, "rig.json", text, strlen(text), &change, 1, &p);
     ck_assert_int_eq(st, ST_SCHEMA);
     ck_assert_ptr_null(s);
     ck_assert_str_eq(p.text, want);
@@ -38,8 +38,8 @@ START_TEST(a_block_is_named_by_its_name_or_its_place)
     struct settings *s;
     struct problems p;
     problems_init(&p);
-    status st = settings_parse(&s, "rig.json", text, strlen(text), changes, 3,
-                               &p);
+    status st =
+        settings_parse(&s, "rig.json", text, strlen(text), changes, 3, &p);
     ck_assert_msg(st == ST_OK, "%s", p.text);
     const struct rig_kind *k = &s->rig.kind[0];
     ck_assert_double_eq_tol(k->block[0].q, 4.5, 1e-12); /* 3^2 0.5 */
@@ -122,8 +122,7 @@ START_TEST(a_tree_that_gets_no_memory_is_said_and_never_half_loaded)
         struct settings *s;
         problems_init(&p);
         allocations_left = n;
-        st = settings_parse(&s, "rig.json", text, strlen(text), changes, 5,
-                            &p);
+        st = settings_parse(&s, "rig.json", text, strlen(text), changes, 5, &p);
         ck_assert_msg(st == ST_OK || st == ST_NOMEM, "%ld: %s", n, p.text);
         ck_assert((s != NULL) == (st == ST_OK));
         ck_assert((p.n == 0) == (st == ST_OK));

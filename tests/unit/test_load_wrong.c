@@ -17,8 +17,7 @@ static char *refuse(const char *text)
     struct settings *s;
     struct problems p;
     problems_init(&p);
-    status st = settings_parse(&s, "rig.json", text, strlen(text), NULL, 0,
-                               &p);
+    status st = settings_parse(&s, "rig.json", text, strlen(text), NULL, 0, &p);
     ck_assert_msg(st == ST_SCHEMA, "%s", text);
     ck_assert_ptr_null(s);
     char *said = strdup(p.text);
@@ -37,8 +36,8 @@ END_TEST
 
 /* A small rig with `extra` at the top, in its track, state block, sensor and
  * the sensor's time. */
-static void rig_with(char *out, size_t size, const char *top,
-                     const char *track, const char *block, const char *sensor)
+static void rig_with(char *out, size_t size, const char *top, const char *track,
+                     const char *block, const char *sensor)
 {
     snprintf(out, size,
              "{%s \"tracks\": {\"c\": {%s \"state\": {%s \"model\": "
@@ -95,13 +94,13 @@ END_TEST
 START_TEST(every_planned_form_is_refused_by_name)
 {
     static const char *const forms[] = {"range-rate", "product", "polynomial",
-                                        "change", "mean", "expression"};
+                                        "change",     "mean",    "expression"};
     static const char *const models[] = {"oscillator", "linear", "singer",
                                          "coordinated-turn"};
     char text[1024], want[128];
     for (int i = 0; i < COUNT(forms) + COUNT(models); i++) {
-        const char *name = i < COUNT(forms) ? forms[i]
-                                            : models[i - COUNT(forms)];
+        const char *name =
+            i < COUNT(forms) ? forms[i] : models[i - COUNT(forms)];
         snprintf(text, sizeof text,
                  "{\"tracks\": {\"c\": {\"state\": {\"model\": \"%s\", \"name\""
                  ": \"x\", \"unit\": \"m\", \"q\": 1}}}, \"sensors\": {\"s\": "
@@ -156,11 +155,11 @@ END_TEST
 
 START_TEST(too_many_states_or_sensors_are_refused)
 {
-    char *said = refuse(
-        "{\"tracks\": {\"c\": {\"state\": {\"model\": \"random-walk\","
-        " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},"
-        " \"sensors\": {\"s{1..200}\": {\"reads\": \"x\", \"u\": 1},"
-        " \"t{1..100}\": {\"reads\": \"x\", \"u\": 1}}}");
+    char *said =
+        refuse("{\"tracks\": {\"c\": {\"state\": {\"model\": \"random-walk\","
+               " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},"
+               " \"sensors\": {\"s{1..200}\": {\"reads\": \"x\", \"u\": 1},"
+               " \"t{1..100}\": {\"reads\": \"x\", \"u\": 1}}}");
     ck_assert_ptr_nonnull(strstr(said, "more than 256 sensors"));
     free(said);
     char text[8192] = "{\"tracks\": {\"c\": {\"state\": [";
@@ -168,7 +167,8 @@ START_TEST(too_many_states_or_sensors_are_refused)
         size_t n = strlen(text);
         snprintf(text + n, sizeof text - n,
                  "%s{\"model\": \"constant-acceleration\", \"name\": \"x%d\","
-                 "\"unit\": \"m\", \"q\": 1}", i > 0 ? "," : "", i);
+                 "\"unit\": \"m\", \"q\": 1}",
+                 i > 0 ? "," : "", i);
     }
     strncat(text, "]}}, \"sensors\": {\"s\": {\"reads\": \"x0\", \"u\": 1}}}",
             100);
@@ -183,9 +183,8 @@ Suite *suite(void)
     Suite *s = suite_create("load_wrong");
     TCase *t = tcase_create("load_wrong");
     tcase_set_timeout(t, 60);
-    tcase_add_loop_test(t,
-                        a_wrong_file_is_refused_with_place_reason_and_remedy, 0,
-                        COUNT(wrong));
+    tcase_add_loop_test(t, a_wrong_file_is_refused_with_place_reason_and_remedy,
+                        0, COUNT(wrong));
     tcase_add_test(t, every_planned_key_is_refused_by_name);
     tcase_add_test(t, every_planned_form_is_refused_by_name);
     tcase_add_test(t, objects_that_are_planned_as_values_are_refused);

@@ -112,12 +112,14 @@ static size_t mutate(struct random *r, char *bytes, size_t len)
 static void good(struct drive *d, int i, int64_t a_ns)
 {
     if (i % 2 == 0)
-        drive_feed(d, a_ns, "{\"sensor\":\"laser\",\"z\":%d.25,\"ns\":%" PRId64
-                            ",\"seq\":%d}",
+        drive_feed(d, a_ns,
+                   "{\"sensor\":\"laser\",\"z\":%d.25,\"ns\":%" PRId64
+                   ",\"seq\":%d}",
                    i % 3, a_ns - 20 * MS + (i % 5) * MS, i);
     else
-        drive_feed(d, a_ns, "{\"sensor\":\"tower\",\"track\":\"raft-%d\","
-                            "\"z\":%d,\"ns\":%" PRId64 "}",
+        drive_feed(d, a_ns,
+                   "{\"sensor\":\"tower\",\"track\":\"raft-%d\","
+                   "\"z\":%d,\"ns\":%" PRId64 "}",
                    i % 4, i % 2, a_ns - 10 * MS);
 }
 
@@ -136,8 +138,8 @@ START_TEST(mutants_change_nothing_and_are_all_counted)
     char bytes[BYTES_MAX + 8];
     for (int i = 0; i < n; i++) {
         int64_t a_ns = T0 + (int64_t)(i + 1) * MS / 4;
-        size_t len = i % 2 == 0 ? json(&r, a_ns, bytes)
-                                : packed(&r, a_ns, bytes);
+        size_t len =
+            i % 2 == 0 ? json(&r, a_ns, bytes) : packed(&r, a_ns, bytes);
         len = mutate(&r, bytes, len);
         /* its own block, so that a read past the end is seen */
         char *exact = malloc(len);
@@ -174,8 +176,8 @@ START_TEST(mutants_change_nothing_and_are_all_counted)
     ck_assert_uint_eq(total - n_good,
                       c->total.outcome[OUTCOME_UNKNOWN_SENSOR] +
                           c->total.outcome[OUTCOME_UNKNOWN_TRACK]);
-    printf("mutants: seed 20260, %d, of which decoded %" PRIu64 ", malformed %" PRIu64
-           "\n",
+    printf("mutants: seed 20260, %d, of which decoded %" PRIu64
+           ", malformed %" PRIu64 "\n",
            n, c->datagrams[DATAGRAM_DECODED] - n_good,
            c->datagrams[DATAGRAM_MALFORMED]);
     drive_fini(&alone);

@@ -89,8 +89,8 @@ static void make(struct random *r, struct datagram *list)
             d->last_ns = at_ns > d->last_ns ? at_ns : d->last_ns;
             len += snprintf(d->text + len, TEXT - (size_t)len, "%s",
                             k > 0 ? "," : "");
-            len += element(r, 4 * i + k, at_ns, d->text + len,
-                           TEXT - (size_t)len);
+            len +=
+                element(r, 4 * i + k, at_ns, d->text + len, TEXT - (size_t)len);
         }
         snprintf(d->text + len, TEXT - (size_t)len, "]");
     }
@@ -162,7 +162,8 @@ START_TEST(any_arrival_order_within_the_horizon_settles_the_same_bytes)
 }
 END_TEST
 
-/* --- drains and wake times -------------------------------------------------- */
+/* --- drains and wake times --------------------------------------------------
+ */
 
 /* A live driver that wakes and stalls at random, as daemon/receive does it:
  * the clock is read before the socket, an empty socket lets time pass. */
@@ -179,8 +180,8 @@ static char *drain(struct random *r, const struct datagram *list,
     int i = 0;
     while (clock_ns < end_ns) {
         static const double stall[] = {0.05, 0.5, 5, 60};
-        clock_ns += (int64_t)(random_exponential(r) *
-                              stall[random_below(r, 4)] * MS);
+        clock_ns +=
+            (int64_t)(random_exponential(r) * stall[random_below(r, 4)] * MS);
         for (;;) {
             int64_t reading_ns = clock_ns;
             int n = 0, most = 1 << (2 * random_below(r, 4));

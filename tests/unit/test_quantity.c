@@ -41,43 +41,42 @@ static double parse(const char *text, const char *to, enum quantity_role role)
 static const struct {
     const char *text, *to;
     double value;
-} good[] = {
-    {"2 mm", "m", 0.002},
-    {"2mm", "m", 0.002},
-    {"  -1.5e3   m/s2 ", "m/s2", -1500},
-    {"+7", "m", 7},
-    {"36 km/h", "m/s", 10},
-    {"0.2 m2/s5", "m2/s5", 0.2},
-    {"1 mm2/s3", "m2/s3", 1e-6},
-    {"1 (km/h)^2/s", "m2/s3", 1 / 12.96},
-    {"180 deg", "rad", PI},
-    {"180 \xc2\xb0", "rad", PI},
-    {"1 deg2/s3", "rad2/s3", PI * PI / 32400},
-    {"60 rev/min", "rad/s", 2 * PI},
-    {"60 rpm", "rad/s", 2 * PI},
-    {"6 deg/s", "rev/min", 1},
-    {"1 gn", "m/s2", 9.80665},
-    {"1 mgn", "m/s2", 0.00980665},
-    {"1 kn", "m/s", 1852.0 / 3600},
-    {"1 kN", "N", 1000},
-    {"4 MiB", "B", 4194304},
-    {"1 GiB", "MiB", 1024},
-    {"1 KiB", "B", 1024},
-    {"0.3 %", "1", 0.003},
-    {"50 ppm", "1", 50e-6},
-    {"20 min", "s", 1200},
-    {"2 kHz", "Hz", 2000},
-    {"5 1/s", "Hz", 5},
-    {"3 pulses", "count", 3},
-    {"3 counts/s", "count/s", 3},
-    {"2 \xc2\xb5m", "mm", 0.002},
-    {"1 gram", "kg", 0.001},
-    {"3 m s-2", "m/s2", 3},
-    {"3 m^2/s^-1", "m2.s", 3},
-    {"4 m**2", "m2", 4},
-    {"2 (1/s)^2", "1/s2", 2},
-    {"1 (%)^2/s", "1/s", 1e-4},
-    {"1 m/s\xc2\xb2", "m/s2", 1}};
+} good[] = {{"2 mm", "m", 0.002},
+            {"2mm", "m", 0.002},
+            {"  -1.5e3   m/s2 ", "m/s2", -1500},
+            {"+7", "m", 7},
+            {"36 km/h", "m/s", 10},
+            {"0.2 m2/s5", "m2/s5", 0.2},
+            {"1 mm2/s3", "m2/s3", 1e-6},
+            {"1 (km/h)^2/s", "m2/s3", 1 / 12.96},
+            {"180 deg", "rad", PI},
+            {"180 \xc2\xb0", "rad", PI},
+            {"1 deg2/s3", "rad2/s3", PI *PI / 32400},
+            {"60 rev/min", "rad/s", 2 * PI},
+            {"60 rpm", "rad/s", 2 * PI},
+            {"6 deg/s", "rev/min", 1},
+            {"1 gn", "m/s2", 9.80665},
+            {"1 mgn", "m/s2", 0.00980665},
+            {"1 kn", "m/s", 1852.0 / 3600},
+            {"1 kN", "N", 1000},
+            {"4 MiB", "B", 4194304},
+            {"1 GiB", "MiB", 1024},
+            {"1 KiB", "B", 1024},
+            {"0.3 %", "1", 0.003},
+            {"50 ppm", "1", 50e-6},
+            {"20 min", "s", 1200},
+            {"2 kHz", "Hz", 2000},
+            {"5 1/s", "Hz", 5},
+            {"3 pulses", "count", 3},
+            {"3 counts/s", "count/s", 3},
+            {"2 \xc2\xb5m", "mm", 0.002},
+            {"1 gram", "kg", 0.001},
+            {"3 m s-2", "m/s2", 3},
+            {"3 m^2/s^-1", "m2.s", 3},
+            {"4 m**2", "m2", 4},
+            {"2 (1/s)^2", "1/s2", 2},
+            {"1 (%)^2/s", "1/s", 1e-4},
+            {"1 m/s\xc2\xb2", "m/s2", 1}};
 
 START_TEST(a_quantity_becomes_the_wanted_unit)
 {
@@ -138,7 +137,9 @@ static const struct {
     {"5 (3 mm)", "m", "holds a number"},
     {"2 1 mm", "m", "holds a number"},
     {"1 K/10 min", "K/s", "holds a number"},
-    {"5 m\xc2\xb7" "2", "m", "holds a number"},
+    {"5 m\xc2\xb7"
+     "2",
+     "m", "holds a number"},
     {"mm", "m", "not a number with a unit"},
     {"", "m", "not a number with a unit"},
     {"nan", "m", "not a number with a unit"},
@@ -165,10 +166,10 @@ START_TEST(the_unit_of_a_derivative_is_written_as_one_would)
         const char *unit;
         int times;
         const char *want;
-    } cases[] = {{"m", 0, "m"},       {"m", 1, "m/s"},    {"m", 2, "m/s2"},
-                 {"deg", 1, "deg/s"}, {"m/s", 1, "m/s2"}, {"1", 1, "1/s"},
-                 {"m2", 1, "m2/s"},   {"km/h", 1, "km/h/s"},
-                 {"m/s2", 1, "m/s3"}};
+    } cases[] = {
+        {"m", 0, "m"},       {"m", 1, "m/s"},       {"m", 2, "m/s2"},
+        {"deg", 1, "deg/s"}, {"m/s", 1, "m/s2"},    {"1", 1, "1/s"},
+        {"m2", 1, "m2/s"},   {"km/h", 1, "km/h/s"}, {"m/s2", 1, "m/s3"}};
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
         char got[32];
         double scale, shift;

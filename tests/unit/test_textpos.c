@@ -28,10 +28,17 @@ END_TEST
 /* RFC 3629: overlong forms, surrogates, beyond U+10FFFF, cut sequences. */
 START_TEST(bytes_that_are_not_utf8_are_found)
 {
-    static const char *const wrong[] = {
-        "ab\x80", "ab\xc0\xaf", "ab\xc1\xbf", "ab\xe0\x9f\xbf",
-        "ab\xed\xa0\x80", "ab\xf0\x8f\xbf\xbf", "ab\xf4\x90\x80\x80",
-        "ab\xf5\x80\x80\x80", "ab\xc3", "ab\xe2\x82", "ab\xff"};
+    static const char *const wrong[] = {"ab\x80",
+                                        "ab\xc0\xaf",
+                                        "ab\xc1\xbf",
+                                        "ab\xe0\x9f\xbf",
+                                        "ab\xed\xa0\x80",
+                                        "ab\xf0\x8f\xbf\xbf",
+                                        "ab\xf4\x90\x80\x80",
+                                        "ab\xf5\x80\x80\x80",
+                                        "ab\xc3",
+                                        "ab\xe2\x82",
+                                        "ab\xff"};
     for (size_t i = 0; i < sizeof wrong / sizeof *wrong; i++)
         ck_assert_int_eq(textpos_bad_utf8(wrong[i], strlen(wrong[i])), 2);
     const char *good = "\xc2\x80\xe0\xa0\x80\xed\x9f\xbf\xf0\x90\x80\x80"
@@ -138,8 +145,7 @@ END_TEST
 
 START_TEST(the_nearest_name_is_at_most_two_edits_away)
 {
-    static const char *const list[] = {"unit", "resolution", "u", "gate",
-                                       NULL};
+    static const char *const list[] = {"unit", "resolution", "u", "gate", NULL};
     ck_assert_str_eq(textpos_nearest("unti", list), "unit");
     ck_assert_str_eq(textpos_nearest("resoluton", list), "resolution");
     ck_assert_str_eq(textpos_nearest("rasoluton", list), "resolution");
@@ -155,17 +161,16 @@ START_TEST(text_that_is_not_json_is_refused_at_its_place)
     static const struct {
         const char *text;
         int at; /* -1: sound */
-    } cases[] = {
-        {"{}", -1},           {" [ ] ", -1},        {"{\"a\":[{},[]]}", -1},
-        {"-0.5e+3", -1},      {"{\"a\":}", 5},      {"{\"a\":1,}", 7},
-        {"[1,]", 3},          {"[1 2]", 3},         {"{\"a\" 1}", 5},
-        {"{a:1}", 1},         {"01", 0},            {"1.", 0},
-        {"-", 0},             {"1e", 0},            {"1e999", 0},
-        {"\"a\nb\"", 2},      {"\"\\x\"", 2},       {"\"\\u12g4\"", 2},
-        {"\"\\u0000\"", 2},   {"[1}", 2},           {"{\"a\":1]", 6},
-        {"{\"a\":1", 6},      {"", 0},              {"tru", 0},
-        {"1 1", 2},           {"+1", 0},            {"NaN", 0},
-        {"\"abc", 4},         {"[[1],", 5},         {"{\"a\":1,,}", 7}};
+    } cases[] = {{"{}", -1},         {" [ ] ", -1},   {"{\"a\":[{},[]]}", -1},
+                 {"-0.5e+3", -1},    {"{\"a\":}", 5}, {"{\"a\":1,}", 7},
+                 {"[1,]", 3},        {"[1 2]", 3},    {"{\"a\" 1}", 5},
+                 {"{a:1}", 1},       {"01", 0},       {"1.", 0},
+                 {"-", 0},           {"1e", 0},       {"1e999", 0},
+                 {"\"a\nb\"", 2},    {"\"\\x\"", 2},  {"\"\\u12g4\"", 2},
+                 {"\"\\u0000\"", 2}, {"[1}", 2},      {"{\"a\":1]", 6},
+                 {"{\"a\":1", 6},    {"", 0},         {"tru", 0},
+                 {"1 1", 2},         {"+1", 0},       {"NaN", 0},
+                 {"\"abc", 4},       {"[[1],", 5},    {"{\"a\":1,,}", 7}};
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
         size_t place = 0;
         const char *what = NULL;
@@ -173,8 +178,8 @@ START_TEST(text_that_is_not_json_is_refused_at_its_place)
         ck_assert_msg(is_sound == (cases[i].at < 0), "%s", cases[i].text);
         if (is_sound)
             continue;
-        ck_assert_msg((int)place == cases[i].at, "%s at %zu: %s",
-                      cases[i].text, place, what);
+        ck_assert_msg((int)place == cases[i].at, "%s at %zu: %s", cases[i].text,
+                      place, what);
         ck_assert_ptr_nonnull(strstr(what, "; "));
     }
 }
