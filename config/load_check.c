@@ -53,16 +53,16 @@ static bool is_planned_choice(const struct table_row *row, const char *text)
     if (strcmp(row->path, "sensors.*.time.stamp") == 0)
         return strcmp(text, "counter") == 0;
     return strcmp(row->path, "tracks.*.state.model") == 0 &&
-           is_choice("oscillator|linear|singer|coordinated-turn", text);
+           is_choice("coordinated-turn", text);
 }
 
 static void unknown_choice(struct loading *l, const cJSON *node,
                            const struct table_row *row)
 {
-    char words[8][32] = {""};
-    const char *list[9] = {NULL};
+    char words[12][32] = {""};
+    const char *list[13] = {NULL};
     int n = 0;
-    for (const char *s = row->of; *s != '\0' && n < 8; n++) {
+    for (const char *s = row->of; *s != '\0' && n < 12; n++) {
         size_t len = strcspn(s, "|");
         snprintf(words[n], sizeof words[n], "%.*s", (int)len, s);
         list[n] = words[n];

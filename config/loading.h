@@ -87,6 +87,16 @@ bool loading_size(struct loading *l, const cJSON *node, const char *to,
 void loading_host(struct loading *l);
 void loading_tracks(struct loading *l);
 void loading_sensors(struct loading *l);
+/* load_block.c: adds a state block to the kind. */
+void loading_block(struct loading *l, const cJSON *node, struct rig_kind *kind);
+/* load_noise.c: the models by their number, and b->q from the block's object;
+ * `state` is the block's first. */
+extern const char *const loading_models[];
+void loading_noise(struct loading *l, const cJSON *node, struct block *b,
+                   struct rig_state *state);
+/* The unit of q: the state unit squared, over seconds to the power. */
+void loading_density_unit(const char *unit, int seconds, char *out,
+                          size_t size);
 /* Fills s->reads and the unit of each row ("rad" for a bearing); false if
  * anything was reported. */
 bool loading_reads(struct loading *l, const cJSON *node, struct rig_sensor *s,

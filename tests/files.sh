@@ -40,7 +40,7 @@ while read -r path; do
     [ "$n" -le $file_max ] || finding "$path: $n lines, more than $file_max: split it"
     long=$(awk -v max=$function_max '
         /^\{/ { begin = NR }
-        /^\}/ && begin { if (NR - begin - 1 > max) print begin; begin = 0 }' "$path")
+        /^\}/ && begin { if (NR - begin + 1 > max) print begin; begin = 0 }' "$path")
     for line in $long; do
         finding "$path:$line: a function of more than $function_max lines: split it"
     done
@@ -51,6 +51,6 @@ keys=$(sed -n '/^## 7\. References/,/^## 8/p' DEVELOPERS.md |
 while IFS=: read -r path key; do
     grep -qxF -- "$key" <<<"$keys" ||
         finding "$path: [$key] is not in DEVELOPERS.md, section 7"
-done < <(grep -roE '\[[A-Z]{2,}[A-Z0-9-]*[0-9]{2,}\]|\[(DLMF|FDLIBM|NIST-[A-Z]+)\]' \
-    core config daemon tools --include='*.[ch]' | sed -E 's/\[(.*)\]/\1/' | sort -u)
+done < <(grep -roE '\[[A-Z]+[A-Z0-9-]*[0-9]{2,}\]|\[(DLMF|FDLIBM|NIST-[A-Z]+)\]' \
+    core config daemon tools tests --include='*.[ch]' | sed -E 's/\[(.*)\]/\1/' | sort -u)
 exit $bad

@@ -34,6 +34,14 @@ const char *rig_text_model(enum block_model model)
         return "constant-velocity";
     case BLOCK_CONSTANT_ACCELERATION:
         return "constant-acceleration";
+    case BLOCK_OSCILLATOR:
+        return "oscillator";
+    case BLOCK_SINGER:
+        return "singer";
+    case BLOCK_LINEAR:
+        return "linear";
+    case BLOCK_LAG:
+        return "lag";
     }
     return "";
 }
@@ -43,13 +51,17 @@ static int q_seconds(enum block_model model)
 {
     switch (model) {
     case BLOCK_CONSTANT:
+    case BLOCK_LINEAR: /* a matrix of them */
+    case BLOCK_LAG:
         return 0;
     case BLOCK_RANDOM_WALK:
     case BLOCK_GAUSS_MARKOV:
         return 1;
     case BLOCK_CONSTANT_VELOCITY:
+    case BLOCK_OSCILLATOR:
         return 3;
     case BLOCK_CONSTANT_ACCELERATION:
+    case BLOCK_SINGER:
         return 5;
     }
     return 0;

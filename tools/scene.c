@@ -113,10 +113,14 @@ static int noise_place(const struct block *b)
     case BLOCK_CONSTANT:
     case BLOCK_RANDOM_WALK:
     case BLOCK_GAUSS_MARKOV:
+    case BLOCK_LINEAR:
+    case BLOCK_LAG:
         return 1;
     case BLOCK_CONSTANT_VELOCITY:
+    case BLOCK_OSCILLATOR:
         return 2;
     case BLOCK_CONSTANT_ACCELERATION:
+    case BLOCK_SINGER:
         return 3;
     }
     return 1;
@@ -138,9 +142,33 @@ static void wander_after(const struct block *b, const struct scene_wander *w,
 /* A noise of density q held for h has variance q / h. */
 static void draw(const struct block *b, double q, struct scene_wander *w)
 {
+    double *c = w->c, omega = b->omega_rad_s;
     w->noise = random_normal(&w->random) * sqrt(q / seconds(SCENE_STEP_NS));
     if (b->model != BLOCK_GAUSS_MARKOV)
-        w->c[noise_place(b)] = w->noise;
+        c[noise_place(b)] = w->noise;
+    if (b->model == BLOCK_OSCILLATOR) {
+        /* accel = w - omega^2 x - 2 zeta omega rate, and its derivative. */
+        c[2] -= omega * (omega * c[0] + 2 * b->zeta * c[1]);
+        c[3] = -omega * (omega * c[1] + 2 * b->zeta * c[2]);
+    } else if (b->model == BLOCK_SINGER) {
+        c[3] -= c[2] / b->tau_s; /* jerk = w - accel/tau */
+    }
+}
+
+/* What settled long before begins anywhere in its spread. */
+static void settle_wander(const struct block *b, double q,
+                          struct scene_wander *w)
+{
+    double omega = b->omega_rad_s;
+    if (b->model == BLOCK_GAUSS_MARKOV) /* u^2 = q tau / 2       */
+        w->c[0] = random_normal(&w->random) * sqrt(q * b->tau_s / 2);
+    if (b->model == BLOCK_SINGER)
+        w->c[2] = random_normal(&w->random) * sqrt(q * b->tau_s / 2);
+    if (b->model != BLOCK_OSCILLATOR || !(b->zeta > 0))
+        return;
+    double rate_u = sqrt(q / (4 * b->zeta * omega));
+    w->c[0] = random_normal(&w->random) * rate_u / omega;
+    w->c[1] = random_normal(&w->random) * rate_u;
 }
 
 static void begin_wander(const struct scene *s, const struct scene_track *t,
@@ -153,8 +181,7 @@ static void begin_wander(const struct scene *s, const struct scene_track *t,
     scene_random(s, "wander", of, &w->random);
     memset(w->c, 0, sizeof w->c);
     w->step = 0;
-    if (b->model == BLOCK_GAUSS_MARKOV) /* u^2 = q tau / 2       */
-        w->c[0] = random_normal(&w->random) * sqrt(truth->q * b->tau_s / 2);
+    settle_wander(b, truth->q, w);
     draw(b, truth->q, w);
 }
 

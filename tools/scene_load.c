@@ -337,6 +337,13 @@ static void load_track(struct loader *l, const cJSON *item)
         refuse_track(l, item->string);
         return;
     }
+    for (int i = 0; i < rig->kind[kind].n_blocks; i++) {
+        if (rig->kind[kind].block[i].model != BLOCK_LINEAR)
+            continue;
+        scene_text_refuse(&l->text, "rehearse a track without it",
+                          "rehearsing a linear block is not built yet");
+        return;
+    }
     l->track = &l->scene->track[l->scene->n_tracks++];
     l->kind = &rig->kind[kind];
     l->track->kind = kind;

@@ -2,6 +2,7 @@
 #include "core/engine/engine.h"
 
 #include "core/engine/engine_state.h"
+#include "core/filter/joined.h"
 #include "core/math/real.h"
 
 /* --- memory ----------------------------------------------------------------
@@ -17,6 +18,16 @@ static size_t largest_state(const struct rig *rig)
     return largest;
 }
 
+/* The largest kind with coupled blocks, 0 if there is none. */
+static int largest_joined(const struct rig *rig)
+{
+    int largest = 0;
+    for (int i = 0; i < rig->n_kinds; i++)
+        if (rig->kind[i].n_components > 0 && rig->kind[i].n > largest)
+            largest = rig->kind[i].n;
+    return largest;
+}
+
 static void lay_out(struct engine *e, struct arena *arena,
                     const struct rig *rig)
 {
@@ -24,6 +35,11 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->counts =
         arena_take(arena, sizeof *e->counts + n * sizeof(struct ledger));
     e->work = arena_take(arena, sizeof *e->work);
+    int n_joined = largest_joined(rig);
+    void *joined =
+        n_joined > 0 ? arena_take(arena, joined_bytes(n_joined)) : NULL;
+    if (e->work)
+        e->work->joined = joined ? joined_init(joined, n_joined) : NULL;
     e->ahead = arena_take(arena, largest_state(rig));
     e->local = arena_take(arena, n * sizeof *e->local);
     e->of_kind = arena_take(arena, n * sizeof *e->of_kind);

@@ -29,6 +29,23 @@ void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
     }
 }
 
+void kf_forget(const struct rig_kind *kind, struct kf *f)
+{
+    int n = kind->n;
+    f->n = n;
+    f->n_free = 0;
+    memset(f->v, 0, kf_bytes(kind) - sizeof *f);
+    for (int i = 0; i < n; i++) {
+        const struct rig_state *s = &kind->state[i];
+        if (s->is_stationary) {
+            kf_x(f)[i] = s->stationary_mean;
+            kf_ud(f)[UD_AT(i, i)] = s->stationary_u * s->stationary_u;
+        } else {
+            kf_B(f)[n * f->n_free++ + i] = 1;
+        }
+    }
+}
+
 /* --- likelihood -------------------------------------------------------------
  */
 
@@ -82,14 +99,6 @@ void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
     ud_scale(kind->n, kf_ud(f), w->b); /* P x 100           */
 }
 
-static const struct block *block_of(const struct rig_kind *kind, int state)
-{
-    int k = 0;
-    while (state >= kind->block[k].at + kind->block[k].n)
-        k++;
-    return &kind->block[k];
-}
-
 void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
 {
     int n = kind->n, n_kept = 0;
@@ -105,15 +114,14 @@ void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
         n_kept += is_kept;
     }
     for (int i = 0; i < n; i++) {
-        const struct block *b = block_of(kind, i);
+        const struct rig_state *s = &kind->state[i];
         if (kind->state[i].is_constant)
             continue;
         for (int j = 0; j < n; j++)
             P[i * n + j] = P[j * n + i] = 0;
-        x[i] = 0;
-        if (b->model == BLOCK_GAUSS_MARKOV) {
-            x[i] = b->mean;
-            P[i * n + i] = b->q * b->tau_s / 2;
+        x[i] = s->is_stationary ? s->stationary_mean : 0;
+        if (s->is_stationary) {
+            P[i * n + i] = s->stationary_u * s->stationary_u;
         } else {
             memset(w->B + n * n_kept, 0, (size_t)n * sizeof(double));
             w->B[n * n_kept++ + i] = 1;

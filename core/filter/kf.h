@@ -51,6 +51,7 @@ struct kf_work {
     double H[READS_MAX * UD_MAX], b[UD_MAX], x[UD_MAX], start[UD_MAX];
     double ud[UD_SIZE(UD_MAX)];
     double B[UD_MAX * UD_MAX];
+    struct joined *joined; /* joined.h; NULL if no kind has components     */
 };
 
 /* The state before any measurement: priors where the rig gives them, nothing
@@ -96,6 +97,9 @@ double kf_total_loglik(const struct kf_total *t);
 
 /* P x 100: rows and columns of states that are not constant, x 10. */
 void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f);
+
+/* Nothing is known any more but the spread of stationary states; t stays. */
+void kf_forget(const struct rig_kind *kind, struct kf *f);
 
 /* Forgets all but the constant states; what has no prior starts from data. */
 void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f);

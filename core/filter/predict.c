@@ -3,6 +3,7 @@
 
 #include <string.h>
 
+#include "core/filter/joined.h"
 #include "core/math/ud_body.h"
 
 /* A dt of zero moves nothing: only the place changes. */
@@ -162,6 +163,10 @@ void kf_predict(const struct rig_kind *kind, struct kf_work *w,
     if (t_ns == from->t_ns) {
         if (to != from)
             copy(from, to);
+        return;
+    }
+    if (kind->n_components > 0) {
+        joined_predict(kind, w, from, t_ns - from->t_ns, to);
         return;
     }
     struct transition t = {n, w->Phi, w->Qu, w->Qd};

@@ -53,8 +53,9 @@ double ud_innovation_variance(int n, const double *ud, const double *h,
 void ud_gram_schmidt(int n, int k, double *W, const double *w, double *ud);
 
 /* ud = factors of W diag(D) W' + V diag(Qd) V': the time update, with W = Phi U
- * and V diag(Qd) V' = Q, both n x n row-major and destroyed.  is_upper: both
- * are zero below the diagonal, which halves the work. [THO76] */
+ * and V diag(Qd) V' = Q, both n x n row-major and destroyed.  V is upper
+ * triangular: nothing below its diagonal is read.  is_upper: W too, which
+ * halves the work. [THO76] */
 void ud_predict(int n, bool is_upper, double *W, double *V, const double *D,
                 const double *Qd, double *ud);
 

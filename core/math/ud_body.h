@@ -119,8 +119,12 @@ UNROLLED void ud_gather(const int n, const bool is_upper, double *W, double *V,
     for (int j = n - 1; j >= 0; j--) {
         double *Wj = W + j * n, *Vj = V + j * n, *col = ud + UD_AT(0, j);
         double d = 0;
+        for (int l = 0; l < j && !is_upper; l++) {
+            c[l] = D[l] * Wj[l];
+            d += c[l] * Wj[l];
+        }
         UD_UNROLL
-        for (int l = is_upper ? j : 0; l < n; l++) {
+        for (int l = j; l < n; l++) {
             c[l] = D[l] * Wj[l];
             e[l] = Qd[l] * Vj[l];
             d += c[l] * Wj[l] + e[l] * Vj[l]; /* D_j                   */
@@ -130,13 +134,17 @@ UNROLLED void ud_gather(const int n, const bool is_upper, double *W, double *V,
         UD_UNROLL
         for (int i = 0; i < j; i++) {
             double *Wi = W + i * n, *Vi = V + i * n, u = 0;
+            for (int l = 0; l < j && !is_upper; l++)
+                u += Wi[l] * c[l];
             UD_UNROLL
-            for (int l = is_upper ? j : 0; l < n; l++)
+            for (int l = j; l < n; l++)
                 u += Wi[l] * c[l] + Vi[l] * e[l];
             u *= inverse; /* U_ij                  */
             col[i] = u;
+            for (int l = 0; l < j && !is_upper; l++)
+                Wi[l] -= u * Wj[l];
             UD_UNROLL
-            for (int l = is_upper ? j : 0; l < n; l++) {
+            for (int l = j; l < n; l++) {
                 Wi[l] -= u * Wj[l];
                 Vi[l] -= u * Vj[l];
             }

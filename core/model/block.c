@@ -1,6 +1,8 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "core/model/block.h"
 
+#include <math.h>
+
 #include "core/math/real.h"
 
 int block_states(enum block_model model)
@@ -9,13 +11,63 @@ int block_states(enum block_model model)
     case BLOCK_CONSTANT:
     case BLOCK_RANDOM_WALK:
     case BLOCK_GAUSS_MARKOV:
+    case BLOCK_LAG:
         return 1;
     case BLOCK_CONSTANT_VELOCITY:
+    case BLOCK_OSCILLATOR:
         return 2;
     case BLOCK_CONSTANT_ACCELERATION:
+    case BLOCK_SINGER:
         return 3;
+    case BLOCK_LINEAR:
+        break;
     }
     return 0;
+}
+
+bool block_is_general(enum block_model model)
+{
+    return model == BLOCK_OSCILLATOR || model == BLOCK_SINGER ||
+           model == BLOCK_LINEAR || model == BLOCK_LAG;
+}
+
+bool block_is_stationary(const struct block *b, int i, double *mean, double *u)
+{
+    double w = b->omega_rad_s;
+    *mean = i == 0 ? b->mean : 0;
+    if (b->model == BLOCK_GAUSS_MARKOV ||
+        (b->model == BLOCK_SINGER && i == 2)) {
+        *u = sqrt(b->q * b->tau_s / 2); /* u^2 = q tau / 2       */
+        return true;
+    }
+    if (b->model != BLOCK_OSCILLATOR || !(b->zeta > 0))
+        return false;
+    *u = sqrt(b->q / (4 * b->zeta * w)) / (i == 0 ? w : 1);
+    return true;
+}
+
+void block_system(const struct block *b, int stride, double *A, double *W,
+                  double *c)
+{
+    int last = b->n - 1;
+    for (int i = 0; i < b->n; i++) {
+        c[i] = 0;
+        for (int j = 0; j < b->n; j++) {
+            A[i * stride + j] = j == i + 1;
+            W[i * stride + j] = 0;
+        }
+    }
+    W[last * stride + last] = b->q;
+    if (b->model == BLOCK_OSCILLATOR) {
+        double w = b->omega_rad_s;
+        A[stride] = -w * w;
+        A[stride + 1] = -2 * b->zeta * w;
+        c[1] = w * w * b->mean;
+    } else if (b->model == BLOCK_GAUSS_MARKOV || b->model == BLOCK_SINGER ||
+               b->model == BLOCK_LAG) {
+        A[last * stride + last] = -1 / b->tau_s;
+        c[last] = b->mean / b->tau_s;
+    }
 }
 
 static void scalar(struct transition *t, int i, double phi, double q)
@@ -88,6 +140,11 @@ void block_transition(const struct block *b, double dt_s, struct transition *t)
         break;
     case BLOCK_CONSTANT_ACCELERATION:
         acceleration(b, dt_s, t);
+        break;
+    case BLOCK_OSCILLATOR:
+    case BLOCK_SINGER:
+    case BLOCK_LINEAR:
+    case BLOCK_LAG: /* lti.h */
         break;
     }
 }

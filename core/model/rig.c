@@ -4,6 +4,7 @@
 #include <string.h>
 
 #include "core/math/chi2.h"
+#include "core/model/component.h"
 
 static int levels_of(const struct rig_kind *kind)
 {
@@ -16,10 +17,24 @@ static int levels_of(const struct rig_kind *kind)
                                                   : 0;
 }
 
+static void find_stationary(struct rig_kind *kind)
+{
+    for (int k = 0; k < kind->n_blocks; k++) {
+        const struct block *b = &kind->block[k];
+        for (int i = 0; i < b->n; i++) {
+            struct rig_state *s = &kind->state[b->at + i];
+            s->is_stationary = block_is_stationary(b, i, &s->stationary_mean,
+                                                   &s->stationary_u);
+        }
+    }
+}
+
 void rig_prepare_kind(struct rig_kind *kind)
 {
     kind->id_len = (int)strlen(kind->id);
-    kind->levels = levels_of(kind);
+    component_build(kind);
+    find_stationary(kind);
+    kind->levels = kind->n_components > 0 ? 0 : levels_of(kind);
     kind->has_limits = false;
     for (int i = 0; i < kind->n; i++)
         kind->has_limits = kind->has_limits || kind->state[i].good_u > 0 ||

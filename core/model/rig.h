@@ -23,19 +23,40 @@ enum {
     RIG_ID_SIZE = 64, /* an id of up to 63 characters and its NUL    */
     RIG_UNIT_SIZE = 32,
     RIG_STATES_MAX = UD_MAX,
-    RIG_BLOCKS_MAX = 24,
+    RIG_BLOCKS_MAX = 48,
     RIG_KINDS_MAX = 64, /* tracks written in the file                  */
     RIG_SENSORS_MAX = 256,
-    RIG_SENDERS_MAX = 32
+    RIG_SENDERS_MAX = 32,
+    RIG_COUPLINGS_MAX = 96,
+    RIG_COMPONENTS_MAX = RIG_BLOCKS_MAX,
+    RIG_LINEAR_MAX = 16, /* states of a linear block                  */
+    RIG_OWN_MAX = 1200,
+    RIG_SYSTEM_MAX = 2 * RIG_STATES_MAX * RIG_STATES_MAX + RIG_STATES_MAX
 };
 
 struct rig_state {
     char name[RIG_ID_SIZE];
     char unit[RIG_UNIT_SIZE];
-    bool is_constant; /* belongs to a block without noise            */
-    bool has_prior;   /* a start was given, or it is stationary      */
+    bool is_constant;   /* belongs to a block without noise            */
+    bool is_stationary; /* has a spread of its own in the long run, by
+                           rig_prepare_kind                                 */
+    double stationary_mean, stationary_u;
+    bool has_prior; /* a start was given, or it is stationary      */
     double prior_mean, prior_u;
     double good_u, lost_u; /* limits on its u, 0 = none                   */
+};
+
+/* dx_state/dt has a part rate * x_on: a lag and the like. */
+struct rig_coupling {
+    int state, on;
+    double rate; /* per second, times the ratio of the units              */
+};
+
+/* States that are discretised together. */
+struct rig_component {
+    int n;
+    int16_t state[RIG_STATES_MAX]; /* ascending                           */
+    int at; /* where its system begins in rig_kind.system: A, W (n x n), c */
 };
 
 /* A track of the file: one id, or every id that starts with a prefix. */
@@ -49,6 +70,12 @@ struct rig_kind {
                         rig_prepare_kind                            */
     struct block block[RIG_BLOCKS_MAX];
     struct rig_state state[RIG_STATES_MAX];
+    int n_couplings, n_own;
+    struct rig_coupling coupling[RIG_COUPLINGS_MAX];
+    double own[RIG_OWN_MAX]; /* of linear blocks: A, W (n x n), c (n)      */
+    int n_components;        /* by rig_prepare_kind, with what follows     */
+    struct rig_component component[RIG_COMPONENTS_MAX];
+    double system[RIG_SYSTEM_MAX];
     bool has_start_at; /* start.at given: the prior belongs to that time */
     int64_t start_at_ns;
     bool has_good;          /* any good.u given                            */

@@ -8,12 +8,13 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "core/filter/kf.h"
+#include "core/filter/joined.h"
 
 struct bed {
     struct rig_kind kind;
     struct kf_work work;
     struct kf *f;
+    void *joined;
     struct kf_seen seen; /* by the last bed_see                           */
     double loglik, nis;  /* sums over everything seen                     */
     int n_judged;        /* components that took part in them             */
@@ -29,6 +30,7 @@ static inline struct bed *bed_new(void)
 static inline void bed_free(struct bed *b)
 {
     free(b->f);
+    free(b->joined);
     free(b);
 }
 
@@ -59,6 +61,10 @@ static inline void bed_start(struct bed *b, int64_t t_ns)
     b->f = calloc(1, kf_bytes(&b->kind));
     ck_assert_ptr_nonnull(b->f);
     rig_prepare_kind(&b->kind);
+    if (b->kind.n_components > 0) {
+        b->joined = calloc(1, joined_bytes(b->kind.n));
+        b->work.joined = joined_init(b->joined, b->kind.n);
+    }
     kf_birth(&b->kind, t_ns, b->f);
 }
 

@@ -187,6 +187,11 @@ static void extended(const struct block *b, long double T, double *Phi,
         Phi[0] = (double)e;
         Q[0] = (double)(-q * tau / 2 * expm1l(-2 * T / tau));
         return;
+    case BLOCK_OSCILLATOR:
+    case BLOCK_SINGER:
+    case BLOCK_LINEAR:
+    case BLOCK_LAG: /* test_joined */
+        return;
     case BLOCK_CONSTANT_VELOCITY: {
         const long double phi[] = {1, T, 0, 1};
         const long double cov[] = {T * T * T / 3, T * T / 2, T * T / 2, T};

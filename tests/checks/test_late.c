@@ -58,7 +58,8 @@ static void make_rig(struct rig *rig, double q, const double *x0,
     snprintf(kind->id, RIG_ID_SIZE, "cart");
     kind->n_blocks = 1;
     kind->n = 2;
-    kind->block[0] = (struct block){BLOCK_CONSTANT_VELOCITY, 0, 2, q, 0, 0};
+    kind->block[0] = (struct block){
+        .model = BLOCK_CONSTANT_VELOCITY, .at = 0, .n = 2, .q = q};
     kind->has_start_at = x0 != NULL;
     kind->start_at_ns = ORIGIN_NS;
     kind->lost_after_ns = 10000000000;

@@ -95,8 +95,7 @@ START_TEST(every_planned_form_is_refused_by_name)
 {
     static const char *const forms[] = {"range-rate", "product", "polynomial",
                                         "change",     "mean",    "expression"};
-    static const char *const models[] = {"oscillator", "linear", "singer",
-                                         "coordinated-turn"};
+    static const char *const models[] = {"coordinated-turn"};
     char text[1024], want[128];
     for (int i = 0; i < COUNT(forms) + COUNT(models); i++) {
         const char *name =
