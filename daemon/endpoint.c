@@ -7,6 +7,7 @@
 #include <netdb.h>
 #include <netinet/in.h>
 #include <stdio.h>
+#include <stdlib.h>
 #include <string.h>
 #include <unistd.h>
 
@@ -20,6 +21,13 @@ status endpoint_parse(struct endpoint *e, const char *text, struct err *err)
         return err_set(err, ST_SCHEMA,
                        "\"%s\" is no address; write HOST:PORT, for example "
                        "127.0.0.1:8410",
+                       text);
+    size_t digits = strspn(colon + 1, "0123456789");
+    if (digits == 0 || digits > 5 || colon[1 + digits] != '\0' ||
+        strtol(colon + 1, NULL, 10) > 65535)
+        return err_set(err, ST_SCHEMA,
+                       "\"%s\": the port must be a number up to 65535; correct "
+                       "it",
                        text);
     size_t len = (size_t)(colon - text);
     bool is_bracketed = len >= 2 && text[0] == '[' && text[len - 1] == ']';
@@ -53,6 +61,11 @@ int endpoint_bind(struct endpoint *e, int type, struct err *err)
                 errno == EADDRINUSE
                     ? "; another program, perhaps another ropewalkd, has it: "
                       "stop it or choose another port"
+                : errno == EADDRNOTAVAIL
+                    ? "; this machine has no such address: correct it in the "
+                      "rig file"
+                : errno == EACCES
+                    ? "; ports below 1024 need a privilege: choose another"
                     : "");
         close(fd);
         return -1;
@@ -93,6 +106,14 @@ void endpoint_print(const struct endpoint *e, char *out, size_t size)
                                 : (const void *)&v4(e)->sin_addr;
     inet_ntop(e->address.ss_family, address, host, sizeof host);
     snprintf(out, size, is_v6 ? "[%s]:%d" : "%s:%d", host, endpoint_port(e));
+}
+
+void endpoint_print_sender(const struct sender *from, char *out, size_t size)
+{
+    char host[INET6_ADDRSTRLEN] = "?";
+    bool is_v6 = from->family == 6;
+    inet_ntop(is_v6 ? AF_INET6 : AF_INET, from->address, host, sizeof host);
+    snprintf(out, size, is_v6 ? "[%s]:%d" : "%s:%d", host, from->port);
 }
 
 struct sender endpoint_sender(const struct sockaddr_storage *address)

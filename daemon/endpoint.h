@@ -24,6 +24,9 @@ int endpoint_port(const struct endpoint *e);
 bool endpoint_is_loopback(const struct endpoint *e);
 void endpoint_print(const struct endpoint *e, char *out, size_t size);
 
+/* The same for a sender. */
+void endpoint_print_sender(const struct sender *from, char *out, size_t size);
+
 struct sender endpoint_sender(const struct sockaddr_storage *address);
 
 #endif

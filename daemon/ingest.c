@@ -15,7 +15,7 @@
  * of another processor may lie a little back. */
 #define EMPTY_MARGIN_NS 5000000
 
-enum { LOOK_MS = 10 };
+enum { LOOK_MS = 10, REFUSALS = 48 };
 
 struct ingest {
     const struct settings *settings;
@@ -32,7 +32,11 @@ struct ingest {
     int64_t told_ns;     /* monotonic, of the last look at drops   */
     uint64_t n_dropped;
     bool wants[2]; /* does anybody want this stream now?      */
-    struct log_site refusals, drops, full;
+    struct log_site drops, full;
+    struct refusals { /* one site a reason                               */
+        const char *why;
+        struct log_site site;
+    } refusals[REFUSALS];
 };
 
 /* --- what comes in
@@ -44,16 +48,32 @@ static void see_who_listens(struct ingest *in)
     in->wants[STREAM_SETTLED] = hub_wants(in->hub, STREAM_SETTLED);
 }
 
-/* A refused datagram's first bytes, fit for a log. */
-static void log_refusal(struct ingest *in, const char *why,
-                        const uint8_t *bytes, size_t len)
+/* Reasons are constants: their address tells them apart.  The last place
+ * takes all that find none of their own. */
+static struct log_site *site_of(struct ingest *in, const char *why)
 {
+    struct refusals *r = in->refusals;
+    int i = 0;
+    while (i < REFUSALS - 1 && r[i].why && r[i].why != why)
+        i++;
+    r[i].why = why;
+    return &r[i].site;
+}
+
+/* A refused datagram's sender and first bytes, fit for a log. */
+static void log_refusal(struct ingest *in, const char *why,
+                        const struct sender *from, const uint8_t *bytes,
+                        size_t len)
+{
+    char name[80];
     char head[61];
     size_t n = len < sizeof head - 1 ? len : sizeof head - 1;
     for (size_t i = 0; i < n; i++)
         head[i] = bytes[i] >= 0x20 && bytes[i] < 0x7f ? (char)bytes[i] : '.';
     head[n] = 0;
-    log_often(&in->refusals, "refused: %s; its first bytes: %s", why, head);
+    endpoint_print_sender(from, name, sizeof name);
+    log_often(site_of(in, why), "refused: %s; from %s, its first bytes: %s",
+              why, name, head);
 }
 
 static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
@@ -70,7 +90,7 @@ static void on_datagram(void *ctx, struct line_reading now, int64_t stamp_ns,
     run_feed(in->run, a_ns, from, bytes, len);
     const char *why = run_last_refusal(in->run);
     if (why)
-        log_refusal(in, why, bytes, len);
+        log_refusal(in, why, from, bytes, len);
 }
 
 static void on_empty(void *ctx, struct line_reading now)
@@ -144,6 +164,8 @@ static void on_timer(uv_timer_t *timer)
     if (mono_ns - in->told_ns < SECOND_NS / 2)
         return;
     in->told_ns = mono_ns;
+    for (int i = 0; i < REFUSALS && in->refusals[i].why; i++)
+        log_flush(&in->refusals[i].site, in->refusals[i].why);
     look_at_drops(in);
     look_at_clock(in);
 }

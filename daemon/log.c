@@ -93,6 +93,18 @@ void log_warn(const char *fmt, ...)
     va_end(args);
 }
 
+void log_flush(struct log_site *site, const char *what)
+{
+    struct timespec now;
+    clock_gettime(CLOCK_MONOTONIC, &now);
+    if (site->n_left_out == 0 || now.tv_sec <= site->last_s + 1)
+        return;
+    log_warn("left out since the last line like this: %llu; %s",
+             (unsigned long long)site->n_left_out, what);
+    site->n_left_out = 0;
+    site->last_s = now.tv_sec;
+}
+
 void log_often(struct log_site *site, const char *fmt, ...)
 {
     struct timespec now;

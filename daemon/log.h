@@ -28,6 +28,9 @@ struct log_site {
     uint64_t n_left_out;
 };
 
+/* Says how many were left out if a second has passed; call it now and then. */
+void log_flush(struct log_site *site, const char *what);
+
 void log_often(struct log_site *site, const char *fmt, ...)
     __attribute__((format(printf, 2, 3)));
 

@@ -199,14 +199,6 @@ static void signals_close(struct server *s)
 /* --- what the operator is told
  * ---------------------------------------------------------- */
 
-static double declared_rate(const struct rig *rig)
-{
-    double rate_hz = 0;
-    for (int i = 0; i < rig->n_sensors; i++)
-        rate_hz += rig->sensor[i].rate_hz;
-    return rate_hz;
-}
-
 static void tell_reach(const struct server *s)
 {
     char udp[80], tcp[80];
@@ -227,7 +219,7 @@ static void tell_reach(const struct server *s)
         log_warn("publishing on tcp %s: everybody on the network can listen",
                  tcp);
     int size = receive_buffer(ingest_receive(s->ingest));
-    double rate_hz = declared_rate(&s->settings->rig);
+    double rate_hz = rig_rate_hz(&s->settings->rig);
     log_info("socket buffer %d KiB: bridges %.0f ms of standstill at the "
              "declared %.0f datagrams/s%s",
              size / 1024, size / 832.0 / rate_hz * 1e3, rate_hz,
@@ -242,7 +234,7 @@ static void tell_capture(const struct server *s)
         log_warn("no capture: this run cannot be repeated");
         return;
     }
-    double bytes_per_s = declared_rate(&s->settings->rig) * 130;
+    double bytes_per_s = rig_rate_hz(&s->settings->rig) * PCAP_RECORD_USUAL;
     double lasts_s = recorder_lasts_s(s->settings, bytes_per_s);
     if (lasts_s < 0) {
         log_info("capture in %s: how long the disk lasts is not known",

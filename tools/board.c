@@ -63,14 +63,10 @@ static struct board_row *row_of(struct board *board, const char *track)
     return row;
 }
 
-static void take_estimate(struct board *board, const cJSON *message)
+static void take_verdict(struct board_row *row, const cJSON *message)
 {
-    struct board_row *row = row_of(board, text_of(message, "track"));
-    if (row == NULL)
-        return;
     snprintf(row->verdict, sizeof row->verdict, "%s",
              text_of(message, "verdict"));
-    snprintf(row->time, sizeof row->time, "%s", text_of(message, "t"));
     row->why[0] = '\0';
     const cJSON *item;
     cJSON_ArrayForEach(item, cJSON_GetObjectItemCaseSensitive(message, "why"))
@@ -81,6 +77,15 @@ static void take_estimate(struct board *board, const cJSON *message)
             snprintf(row->why + len, sizeof row->why - len, "%s%s",
                      len == 0 ? "" : ", ", reason);
     }
+}
+
+static void take_estimate(struct board *board, const cJSON *message)
+{
+    struct board_row *row = row_of(board, text_of(message, "track"));
+    if (row == NULL)
+        return;
+    take_verdict(row, message);
+    snprintf(row->time, sizeof row->time, "%s", text_of(message, "t"));
     const cJSON *x = cJSON_GetObjectItemCaseSensitive(message, "x");
     const cJSON *u = cJSON_GetObjectItemCaseSensitive(message, "u");
     for (row->n = 0; row->n < BOARD_STATES_MAX; row->n++) {
@@ -92,6 +97,19 @@ static void take_estimate(struct board *board, const cJSON *message)
         row->x[row->n] = x_i->valuedouble;
         row->u[row->n] = u_i == NULL ? 0 : u_i->valuedouble;
     }
+}
+
+static void take_event(struct board *board, const cJSON *message)
+{
+    const char *event = text_of(message, "event");
+    bool is_verdict = strcmp(event, "verdict") == 0;
+    struct board_row *row =
+        is_verdict ? row_of(board, text_of(message, "track")) : NULL;
+    if (row != NULL)
+        take_verdict(row, message);
+    snprintf(board->event, sizeof board->event, "%s %s %s %s",
+             text_of(message, "t"), event, text_of(message, "track"),
+             text_of(message, is_verdict ? "verdict" : "sensor"));
 }
 
 void board_take(struct board *board, const char *line)
@@ -106,10 +124,17 @@ void board_take(struct board *board, const char *line)
     if (strcmp(type, "estimate") == 0)
         take_estimate(board, message);
     else if (strcmp(type, "event") == 0)
-        snprintf(board->event, sizeof board->event, "%s %s %s %s",
-                 text_of(message, "t"), text_of(message, "event"),
-                 text_of(message, "track"), text_of(message, "sensor"));
+        take_event(board, message);
     cJSON_Delete(message);
+}
+
+void board_close(struct board *board)
+{
+    for (int i = 0; i < board->n; i++)
+        snprintf(board->row[i].verdict, sizeof board->row[i].verdict, "%s",
+                 "(old)");
+    snprintf(board->event, sizeof board->event,
+             "the connection ended: nothing above is current");
 }
 
 /* States of the description's track that an id belongs to, or NULL. */

@@ -20,6 +20,9 @@ void board_free(struct board *board);
  * passed over. */
 void board_take(struct board *board, const char *line);
 
+/* The connection ended: what is shown is no longer current. */
+void board_close(struct board *board);
+
 void board_draw(struct board *board, FILE *to, bool in_colour);
 
 #endif

@@ -8,6 +8,7 @@
 
 #include "config/quantity.h"
 #include "core/wire/decode.h"
+#include "core/wire/pcap.h"
 
 double call_number(const struct call *call, const char *name, double otherwise,
                    bool *bad)
@@ -68,8 +69,24 @@ static int count_given(const struct call *call, const char *name)
     return n;
 }
 
+/* The arguments in the wrong order, most likely. */
+static bool is_capture(const char *path)
+{
+    uint8_t head[PCAP_FILE_HEAD_SIZE];
+    struct pcap_form form;
+    FILE *file = fopen(path, "rb");
+    size_t n = file == NULL ? 0 : fread(head, 1, sizeof head, file);
+    if (file != NULL)
+        fclose(file);
+    return pcap_read_file_head(head, n, &form);
+}
+
 struct settings *call_rig_path(const struct call *call, const char *path)
 {
+    if (is_capture(path)) {
+        call_say(call, "%s: is a capture; the rig file comes first", path);
+        return NULL;
+    }
     int n_set = count_given(call, "set"), n = 0;
     int n_all = n_set + count_given(call, "without");
     struct settings_change *change = calloc((size_t)n_all + 1, sizeof *change);

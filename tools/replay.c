@@ -2,6 +2,7 @@
 #include "tools/replay.h"
 
 #include <stdlib.h>
+#include <string.h>
 
 #include "daemon/pages.h"
 
@@ -42,7 +43,8 @@ static void begin_again(struct replay *r, int64_t line_ns)
 
 static void take_datagram(struct replay *r, const struct pcap_record *record)
 {
-    if (r->port != 0 && record->to.port != r->port) {
+    bool may_be_other = r->port_is_given || !r->is_ours;
+    if (r->port != 0 && may_be_other && record->to.port != r->port) {
         r->n_other_port++;
         return;
     }
@@ -51,6 +53,13 @@ static void take_datagram(struct replay *r, const struct pcap_record *record)
     r->line_ns = run_feed(r->run, record->a_ns, &record->from, record->payload,
                           record->len);
     r->n_fed++;
+}
+
+static bool is_this_rig(const struct replay *r, const struct text *hash)
+{
+    size_t len = strlen(r->rig->file_hash);
+    return hash->len == 0 || ((size_t)hash->len == len &&
+                              memcmp(hash->at, r->rig->file_hash, len) == 0);
 }
 
 void replay_take(struct replay *r, const struct pcap_record *record)
@@ -67,6 +76,7 @@ void replay_take(struct replay *r, const struct pcap_record *record)
     case CONTROL_START:
         r->n_starts++;
         r->is_ours = true;
+        r->n_other_rig += !is_this_rig(r, &record->rig);
         if (r->is_begun)
             begin_again(r, record->line_ns);
         else

@@ -18,11 +18,12 @@ struct replay {
     struct run *run;
     void *memory;
     struct message_sink sink;
-    int port; /* only datagrams to this one; 0 = all         */
+    int port;           /* only datagrams to this one; 0 = all         */
+    bool port_is_given; /* else a capture of ours is taken whole        */
     bool is_begun, is_ours, is_ended;
     int64_t line_ns; /* how far the line is known to have come      */
     uint64_t n_fed, n_other_port;
-    uint64_t n_starts, n_gaps, n_drops; /* control records                */
+    uint64_t n_starts, n_gaps, n_other_rig, n_drops; /* control records */
 };
 
 /* ST_NOMEM when the run does not fit into memory.  The rig must outlive it. */

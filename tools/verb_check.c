@@ -6,28 +6,18 @@
 #include <string.h>
 
 #include "core/run/run.h"
+#include "core/wire/pcap.h"
 #include "core/wire/writer.h"
 #include "tools/check.h"
 #include "tools/rig_text.h"
 
-enum {
-    CHECK_JSON_SIZE = 1 << 20,
-    CHECK_RECORD_BYTES = 16 + 28 + 56 /* heads and a usual datagram       */
-};
+enum { CHECK_JSON_SIZE = 1 << 20 };
 
 /* --- what follows from the rig ------------------------------------------- */
 
-static double measurements_per_s(const struct rig *rig)
-{
-    double rate_hz = 0;
-    for (int i = 0; i < rig->n_sensors; i++)
-        rate_hz += rig->sensor[i].rate_hz;
-    return rate_hz;
-}
-
 static double disk_bytes_per_s(const struct rig *rig)
 {
-    return measurements_per_s(rig) * CHECK_RECORD_BYTES;
+    return rig_rate_hz(rig) * PCAP_RECORD_USUAL;
 }
 
 static bool is_loopback(const char *address)
@@ -157,12 +147,12 @@ static void print_load(const struct settings *s)
     rig_text_bytes(disk_bytes_per_s(rig) * 3600, disk, sizeof disk);
     printf("\nmemory %s for the estimate; capture about %s an hour\n", memory,
            disk);
-    printf("load %g measurements/s", measurements_per_s(rig));
+    printf("load %g measurements/s", rig_rate_hz(rig));
     if (cost_s > 0)
         printf(", about %.2g us each for the estimate on this machine, %.2g %% "
                "of a core",
-               cost_s * 1e6, 100 * cost_s * measurements_per_s(rig));
-    printf(" (one track of each kind)");
+               cost_s * 1e6, 100 * cost_s * rig_rate_hz(rig));
+    printf(" (a prefix: as many tracks as there is room for)");
     printf("\nlimits: %d tracks, %d ids a sender, %g repeated steps a sensor "
            "and second\n",
            rig->max_tracks, rig->max_ids_per_sender, rig->max_steps);
@@ -296,7 +286,7 @@ static size_t write_json(const struct settings *s, char *buf, size_t size)
     writer_key(&w, "memory_bytes");
     writer_count(&w, run_bytes(rig));
     write_value(&w, "disk_bytes_per_s", disk_bytes_per_s(rig));
-    write_value(&w, "measurements_per_s", measurements_per_s(rig));
+    write_value(&w, "measurements_per_s", rig_rate_hz(rig));
     writer_key(&w, "max_tracks");
     writer_count(&w, (uint64_t)rig->max_tracks);
     writer_key(&w, "tracks");

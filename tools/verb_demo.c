@@ -170,15 +170,18 @@ static int connect_all(struct job *job)
 static void tell_next_steps(const struct job *job)
 {
     const struct demo_host *h = &job->host;
+    const char *tool = program_invocation_name; /* as it is found from here */
     printf("\nLeft in %s: the rig file, its rehearsal, the daemon's log%s.\n"
-           "Next:\n  ropewalk check %s\n",
-           h->folder, h->capture[0] == '\0' ? "" : " and the capture", h->rig);
+           "Next:\n  %s check %s\n",
+           h->folder, h->capture[0] == '\0' ? "" : " and the capture", tool,
+           h->rig);
     if (h->capture[0] != '\0')
-        printf("  ropewalk replay %s %s/*.pcap --stream settled\n", h->rig,
+        printf("  %s replay %s %s/*.pcap --stream settled\n", tool, h->rig,
                h->capture);
-    printf("  ropewalkd %s --set receive.udp=%s --set serve.tcp=%s &\n"
-           "  ropewalk follow %s &\n  ropewalk rehearse %s --to %s\n",
-           h->rig, ADDRESS_UDP, ADDRESS_TCP, ADDRESS_TCP, h->rig, ADDRESS_UDP);
+    printf("  %sd %s --set receive.udp=%s --set serve.tcp=%s &\n"
+           "  %s follow %s &\n  %s rehearse %s --to %s\n",
+           tool, h->rig, ADDRESS_UDP, ADDRESS_TCP, tool, ADDRESS_TCP, tool,
+           h->rig, ADDRESS_UDP);
 }
 
 static int show(struct job *job)

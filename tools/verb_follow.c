@@ -165,6 +165,10 @@ static int follow(struct job *job)
         close(fd);
         if (is_over(job))
             return EXIT_FINE;
+        if (job->board != NULL) {
+            board_close(job->board);
+            board_draw(job->board, stdout, job->in_colour);
+        }
         if (ferror(stdout))
             return EXIT_PROBLEM;
         call_say(job->call, "%s: the connection ended; trying again", job->at);

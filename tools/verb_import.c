@@ -11,6 +11,7 @@
 #include "core/wire/pcap.h"
 #include "core/wire/writer.h"
 #include "tools/address.h"
+#include "tools/create.h"
 #include "tools/import.h"
 #include "tools/instant.h"
 
@@ -262,11 +263,11 @@ static int by_arrival(const void *a, const void *b)
 static int write_capture(struct job *job)
 {
     uint8_t head[PCAP_FILE_HEAD_SIZE];
-    FILE *to = fopen(job->out, "wb");
-    if (to == NULL) {
-        call_say(job->call, "%s: %s", job->out, strerror(errno));
+    const char *const input[] = {call_arg(job->call, 0),
+                                 call_option(job->call, "rig")};
+    FILE *to = create_file(job->call, job->out, input, 2);
+    if (to == NULL)
         return EXIT_NOT_THERE;
-    }
     qsort(job->record, job->n, sizeof *job->record, by_arrival);
     pcap_write_file_head(head);
     bool ok = fwrite(head, sizeof head, 1, to) == 1;

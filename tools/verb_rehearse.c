@@ -11,6 +11,7 @@
 
 #include "core/wire/pcap.h"
 #include "tools/address.h"
+#include "tools/create.h"
 #include "tools/instant.h"
 
 /* Where a rehearsal on disk begins unless --begin says otherwise:
@@ -53,11 +54,11 @@ static char *beside(const char *path, const char *what)
 
 static FILE *create(const struct job *job, const char *path)
 {
-    FILE *to = path == NULL ? NULL : fopen(path, "wb");
-    if (to == NULL)
-        call_say(job->call, "%s: %s", path == NULL ? "truth" : path,
-                 strerror(errno));
-    return to;
+    const char *const input[] = {call_arg(job->call, 0), job->path};
+    if (path != NULL)
+        return create_file(job->call, path, input, 2);
+    call_say(job->call, "out of memory");
+    return NULL;
 }
 
 static bool close_file(const struct job *job, FILE *file, const char *what)

@@ -9,6 +9,7 @@
 #include "core/wire/encode.h"
 #include "daemon/capture.h"
 #include "tools/address.h"
+#include "tools/create.h"
 #include "tools/output.h"
 #include "tools/replay.h"
 
@@ -51,6 +52,10 @@ static void say_result(const struct job *job)
                  "the line begins %llu times; each begins with a new "
                  "state, the summary is of the last",
                  (unsigned long long)r->n_starts);
+    if (r->n_other_rig > 0)
+        call_say(call, "the capture was made with another rig file, kept "
+                       "beside it as *.rig.json; these are the numbers of the "
+                       "file named here");
     if (r->n_gaps > 0)
         call_say(call,
                  "the capture has %llu gaps: what it lacks was fused "
@@ -108,21 +113,30 @@ static int replay_all(struct job *job)
     return EXIT_FINE;
 }
 
+static FILE *create(const struct call *call, const char *path)
+{
+    enum { INPUTS_MAX = 64 };
+    const char *input[INPUTS_MAX];
+    int n = 0;
+    for (; n < call_n_args(call) && n < INPUTS_MAX; n++)
+        input[n] = call_arg(call, n);
+    return create_file(call, path, input, n);
+}
+
 /* Opens the output and drives everything; `port` 0 takes every port. */
 static int replay_to(struct job *job, const struct rig *rig, int port,
                      enum output_streams streams)
 {
     const struct call *call = job->call;
     const char *path = call_option(call, "out");
-    FILE *to = path == NULL ? stdout : fopen(path, "wb");
-    if (to == NULL) {
-        call_say(call, "%s: %s", path, strerror(errno));
+    FILE *to = path == NULL ? stdout : create(call, path);
+    if (to == NULL)
         return EXIT_NOT_THERE;
-    }
     int code = EXIT_PROBLEM;
     status ready = output_init(&job->output, rig, to, streams);
     if (ready == ST_OK)
         ready = replay_init(&job->replay, rig, port, output_sink(&job->output));
+    job->replay.port_is_given = call_option(call, "port") != NULL;
     if (ready == ST_OK)
         code = replay_all(job);
     else
@@ -181,8 +195,8 @@ static const struct option_row options[] = {
      false},
     {"out", "FILE", "writes there instead of to standard output", false},
     {"port", "N",
-     "takes datagrams to this port; default is that of the rig's "
-     "receive.udp, 0 takes every port",
+     "takes datagrams to this port; 0 takes every port; default: all of a "
+     "capture of ours, of others those to the rig's receive.udp",
      false},
     {NULL, NULL, NULL, false},
 };

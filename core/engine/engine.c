@@ -44,6 +44,7 @@ static void lay_out(struct engine *e, struct arena *arena,
     e->local = arena_take(arena, n * sizeof *e->local);
     e->of_kind = arena_take(arena, n * sizeof *e->of_kind);
     e->silent = arena_take(arena, n * sizeof *e->silent);
+    e->aside = arena_take(arena, n * sizeof *e->aside);
     e->seq = arena_take(arena, n * sizeof *e->seq);
     e->summary = arena_take(arena, n * sizeof *e->summary);
     e->quota = arena_take(arena, n * sizeof *e->quota);
@@ -172,6 +173,7 @@ static void settle(struct engine *e, struct track *t, int64_t before_ns)
         const struct track_state *st;
         struct step *s = track_settle(t, &lay, &st);
         count_settled(e, t, s);
+        aside_weigh(e, t, s);
         speak_settled(e, t, s, st);
     }
 }
@@ -306,6 +308,7 @@ void engine_reanchor(struct engine *e, int64_t line_ns)
             t->watch[k].heard_ns += line_ns - was_ns;
             t->watch[k].settled_t_ns = INT64_MIN;
         }
+        t->used_ns += line_ns - was_ns;
         t->live.is_started = t->settled.is_started = false;
         intake_schedule(e, t);
     }

@@ -30,7 +30,7 @@ struct engine {
     int16_t *local;   /* by sensor: its number within its track          */
     int16_t *of_kind; /* sensors in order of kind                        */
     int first_of_kind[RIG_KINDS_MAX + 1];
-    bool *silent; /* scratch of one judgement                        */
+    bool *silent, *aside;   /* scratch of one judgement                    */
     struct seq_window *seq; /* by sensor                                   */
     struct sensor_summary *summary; /* scratch, by sensor                  */
     int32_t *quota; /* by sensor: pending measurements per track       */
@@ -61,6 +61,9 @@ void speak_settled(struct engine *e, struct track *t, struct step *s,
 void speak_event(struct engine *e, enum event_kind kind, const struct track *t,
                  int sensor, int64_t t_ns);
 void speak_mark(struct engine *e, const struct measurement *m, int64_t t_ns);
+
+/* aside.c: a settled step's part in whether its sensor is set aside. */
+void aside_weigh(struct engine *e, struct track *t, const struct step *s);
 
 /* Silence and verdict as of now; says what changed. */
 void speak_judge_live(struct engine *e, struct track *t, bool is_tick);

@@ -55,6 +55,14 @@ static enum outcome refuse(struct engine *e, enum outcome o, const char *why)
     return o;
 }
 
+/* Milli- or microseconds since 1970, 2001 to 2100, where nanoseconds stand. */
+static bool is_scaled(int64_t t_ns)
+{
+    const int64_t least_ms = 1000000000000, most_ms = 4102444800000;
+    return (t_ns > least_ms && t_ns < most_ms) ||
+           (t_ns > least_ms * 1000 && t_ns < most_ms * 1000);
+}
+
 static bool is_implausible(const struct engine *e, const struct measurement *m,
                            const char **why)
 {
@@ -68,6 +76,11 @@ static bool is_implausible(const struct engine *e, const struct measurement *m,
     if (m->has_t && (m->t_ns < -STAMP_MAX_NS || m->t_ns > STAMP_MAX_NS)) {
         *why = "t is not within 127 years of 1970: send seconds since 1970 "
                "UTC, not milliseconds";
+        return true;
+    }
+    if (m->has_t && is_scaled(m->t_ns)) {
+        *why = "the stamp in ns looks like milli- or microseconds since 1970: "
+               "send nanoseconds, or seconds as `t`";
         return true;
     }
     if (m->has_t && m->t_ns < BOOT_STAMP_NS && e->now_ns > BOOT_STAMP_NS) {
@@ -243,7 +256,9 @@ static enum outcome place(struct engine *e, const struct measurement *m,
     if (d->track && is_by_arrival)
         is_duplicate = is_repeat(e, d->track);
     if (is_duplicate && n_read > 0)
-        return refuse(e, OUTCOME_DUPLICATE, "came before");
+        return refuse(e, OUTCOME_DUPLICATE,
+                      "came before: the sender or the network repeats "
+                      "datagrams, nothing is lost");
     if (n_read == 0)
         return OUTCOME_NO_READING;
     if (!d->track)

@@ -77,8 +77,8 @@ void speak_mark(struct engine *e, const struct measurement *m, int64_t t_ns)
 
 /* What is heard of a track's sensors, by arrival. */
 struct hearing {
-    int64_t quiet_ns; /* since anything was heard                          */
-    int n_silent;
+    int64_t quiet_ns; /* since a measurement was used                      */
+    bool is_coasting; /* all silent, or heard without a reading            */
     bool has_changed; /* one fell silent just now                          */
 };
 
@@ -87,7 +87,9 @@ static struct hearing hear(struct engine *e, struct track *t, bool is_tick)
 {
     int n;
     const int16_t *sensor = engine_sensors(e, t, &n);
-    struct hearing h = {INT64_MAX, 0, false};
+    struct hearing h = {e->now_ns - t->used_ns, false, false};
+    int64_t slowest_ns = 0;
+    int n_silent = 0;
     for (int i = 0; i < n; i++) {
         struct watch *w = &t->watch[i];
         int64_t since = e->now_ns - w->heard_ns;
@@ -98,19 +100,23 @@ static struct hearing hear(struct engine *e, struct track *t, bool is_tick)
             speak_event(e, EVENT_SILENT, t, sensor[i], e->now_ns);
         }
         e->silent[i] = w->is_silent;
-        h.n_silent += w->is_silent;
-        if (since < h.quiet_ns)
-            h.quiet_ns = since;
+        e->aside[i] = w->is_aside;
+        n_silent += w->is_silent;
+        int64_t after_ns = e->rig->sensor[sensor[i]].silent_after_ns;
+        slowest_ns = after_ns > slowest_ns ? after_ns : slowest_ns;
     }
+    const struct track_state *tip = track_tip(t);
+    h.is_coasting =
+        n_silent == n || (tip && tip->refused == 0 && h.quiet_ns > slowest_ns);
     return h;
 }
 
 /* Good without reservation, and nothing that could change that. */
 static bool is_plainly_good(const struct track *t, const struct track_state *st)
 {
-    return t->n_silent == 0 && t->live.verdict == VERDICT_GOOD &&
-           t->live.n_why == 0 && !t->kind->has_limits && st->refused == 0 &&
-           st->kf.n_free == 0;
+    return t->n_silent == 0 && t->n_aside == 0 &&
+           t->live.verdict == VERDICT_GOOD && t->live.n_why == 0 &&
+           !t->kind->has_limits && st->refused == 0 && st->kf.n_free == 0;
 }
 
 void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
@@ -122,7 +128,7 @@ void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
     const int16_t *sensor = engine_sensors(e, t, &n);
     struct hearing h = hear(e, t, is_tick);
     const struct track_state *tip = newest;
-    bool is_coasting = h.n_silent == n;
+    bool is_coasting = h.is_coasting;
     if (!tip || (is_tick && !h.has_changed && !is_coasting))
         return;
     const struct step *last =
@@ -130,7 +136,9 @@ void speak_judge_live(struct engine *e, struct track *t, bool is_tick)
     struct verdict_input in = {&tip->kf,
                                sensor,
                                e->silent,
+                               e->aside,
                                n,
+                               is_coasting,
                                h.quiet_ns,
                                tip->refused,
                                last ? last->sensor : (int16_t)-1};
@@ -184,6 +192,8 @@ void speak_live(struct engine *e, struct track *t, int n_laid_again)
     const struct step *s = track_step(t, t->n_laid - 1);
     if (t->n_live == 0 && t->kind->is_prefix)
         speak_event(e, EVENT_TRACK, t, -1, e->now_ns);
+    if (tip->refused == 0)
+        t->used_ns = e->now_ns;
     speak_judge_live(e, t, false);
     t->n_live++;
     if (!is_wanted(e, STREAM_LIVE))
@@ -218,9 +228,10 @@ static void judge_settled(struct engine *e, struct track *t,
         int64_t t_ns = t->watch[i].settled_t_ns;
         int64_t after = e->rig->sensor[sensor[i]].silent_after_ns;
         e->silent[i] = t_ns == INT64_MIN || s->t_ns - t_ns >= after;
+        e->aside[i] = t->watch[i].is_aside;
     }
-    struct verdict_input in = {&st->kf, sensor,      e->silent, n,
-                               0,       st->refused, s->sensor};
+    struct verdict_input in = {&st->kf, sensor, e->silent,   e->aside, n,
+                               false,   0,      st->refused, s->sensor};
     verdict_judge(t->kind, &in, &t->settled);
 }
 

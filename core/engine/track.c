@@ -69,6 +69,7 @@ void track_open(struct track *t, const struct rig *rig, int kind,
     t->place = was.place;
     t->sender = -1;
     t->is_used = true;
+    t->used_ns = now_ns;
     t->is_confirmed = !t->kind->is_prefix;
     t->scratch_at = -1;
     kf_total_begin(&t->total);

@@ -63,7 +63,9 @@ struct watch {
     int64_t heard_ns;     /* arrival of its last valid measurement      */
     int64_t settled_t_ns; /* stamp of its last settled one              */
     int32_t pending;      /* its measurements that are not settled      */
-    bool is_silent;
+    bool is_silent, is_aside;
+    uint16_t refused, agreed; /* settled in a row: by the gate; while aside  */
+    int64_t refused_since_ns; /* stamp of the first of them                */
     struct sensor_summary summary;
 };
 
@@ -108,7 +110,8 @@ struct track {
     uint64_t n_live, n_final; /* messages said                            */
     struct kf_total total;
     uint64_t n_used;
-    int n_silent; /* of its sensors                             */
+    int n_silent, n_aside; /* of its sensors                             */
+    int64_t used_ns;       /* arrival line when a measurement was last used */
     struct judged live, settled;
     struct watch *watch; /* by local sensor number                     */
 };

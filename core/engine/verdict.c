@@ -34,24 +34,26 @@ static enum verdict judge(const struct rig_kind *kind,
     if (undetermined)
         return VERDICT_STARTING;
 
-    int n_silent = 0;
-    for (int i = 0; i < in->n_sensors; i++)
-        n_silent += in->is_silent[i];
-    bool is_coasting = n_silent == in->n_sensors;
+    int n_aside = 0, n_believed = 0;
+    for (int i = 0; i < in->n_sensors; i++) {
+        n_aside += in->is_aside[i];
+        n_believed += !in->is_aside[i] && !in->is_silent[i];
+    }
     if (above(kind, in->kf, true, j) > 0)
         return j->is_started ? VERDICT_LOST : VERDICT_STARTING;
-    if (is_coasting && in->quiet_ns > kind->lost_after_ns)
+    if (in->quiet_ns > kind->lost_after_ns)
         return VERDICT_LOST;
     int n_above = above(kind, in->kf, false, j);
     if (!j->is_started && n_above > 0)
         return VERDICT_STARTING;
     j->is_started = true;
-    if (is_coasting)
+    if (in->is_coasting)
         return VERDICT_COASTING;
     if (in->refused >= VERDICT_REFUSED)
         because(j, REASON_REFUSED, in->last_sensor);
-    return n_above > 0 || in->refused >= VERDICT_REFUSED ? VERDICT_DOUBTFUL
-                                                         : VERDICT_GOOD;
+    bool is_doubtful = n_above > 0 || in->refused >= VERDICT_REFUSED ||
+                       (n_aside > 0 && n_aside >= n_believed);
+    return is_doubtful ? VERDICT_DOUBTFUL : VERDICT_GOOD;
 }
 
 void verdict_judge(const struct rig_kind *kind, const struct verdict_input *in,
@@ -59,6 +61,9 @@ void verdict_judge(const struct rig_kind *kind, const struct verdict_input *in,
 {
     j->n_why = 0;
     j->verdict = (uint8_t)judge(kind, in, j);
+    for (int i = 0; i < in->n_sensors; i++)
+        if (in->is_aside[i])
+            because(j, REASON_SET_ASIDE, in->sensor[i]);
     for (int i = 0; i < in->n_sensors; i++)
         if (in->is_silent[i])
             because(j, REASON_SILENT, in->sensor[i]);

@@ -128,7 +128,10 @@ enum verdict {
       "wait for more sensors, or give the state a start")                      \
     X(REASON_REFUSED, "refused",                                               \
       "the last measurements of this sensor were refused by the gate",         \
-      "compare its reading, unit and u with the others")
+      "compare its reading, unit and u with the others")                       \
+    X(REASON_SET_ASIDE, "set-aside",                                           \
+      "this sensor is refused while others are believed",                      \
+      "compare its reading, unit and u with the others: either may be wrong")
 
 enum reason_code {
 #define X(name, code, text, remedy) name,
@@ -188,6 +191,8 @@ struct estimate {
     X(EVENT_WIDENED, "widened")                                                \
     X(EVENT_RESTART, "restart")                                                \
     X(EVENT_TRACK, "track")                                                    \
+    X(EVENT_SET_ASIDE, "set-aside")                                            \
+    X(EVENT_TAKEN_BACK, "taken-back")                                          \
     X(EVENT_RETIRED, "retired")                                                \
     X(EVENT_REANCHOR, "reanchor")                                              \
     X(EVENT_MARK, "mark")

@@ -54,6 +54,21 @@ void rig_prepare(struct rig *rig)
         rig_prepare_kind(&rig->kind[i]);
 }
 
+double rig_rate_hz(const struct rig *rig)
+{
+    int n_fixed = 0;
+    double rate_hz = 0;
+    for (int i = 0; i < rig->n_kinds; i++)
+        n_fixed += !rig->kind[i].is_prefix;
+    int n_free = rig->max_tracks - n_fixed;
+    for (int i = 0; i < rig->n_sensors; i++) {
+        bool is_prefix = rig->kind[rig->sensor[i].kind].is_prefix;
+        rate_hz +=
+            rig->sensor[i].rate_hz * (is_prefix && n_free > 1 ? n_free : 1);
+    }
+    return rate_hz;
+}
+
 int rig_find_sensor(const struct rig *rig, const char *name, size_t len)
 {
     int low = 0, high = rig->n_sensors - 1;

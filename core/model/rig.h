@@ -157,6 +157,10 @@ static inline int rig_compare(const char *id, size_t len, const char *entry)
     return order != 0 ? order : (len > n) - (len < n);
 }
 
+/* Measurements per second that the rig declares: rates are per track, and a
+ * prefix stands for as many tracks as limits.tracks leaves room for. */
+double rig_rate_hz(const struct rig *rig);
+
 /* Fills what follows from the rest: gate limits from gate_p, keys, lengths.
  * Call once after config filled the struct. */
 void rig_prepare(struct rig *rig);

@@ -39,6 +39,7 @@ static const char *subject_name(const struct rig *rig, int kind,
     switch ((enum reason_code)r->code) {
     case REASON_SILENT:
     case REASON_REFUSED:
+    case REASON_SET_ASIDE:
         return sensor_name(rig, r->subject);
     case REASON_U:
     case REASON_UNDETERMINED:

@@ -16,7 +16,7 @@
 
 #include "core/model/message.h"
 
-enum { ENGINE_NUMBER = 1 };
+enum { ENGINE_NUMBER = 2 };
 
 enum wire_form { WIRE_JSON, WIRE_MSGPACK };
 

@@ -21,6 +21,7 @@ enum {
     PCAP_FILE_HEAD_SIZE = 24,
     PCAP_RECORD_HEAD_MAX = 16 + 40 + 8, /* record, IPv6, UDP              */
     PCAP_LINKTYPE_RAW = 101,
+    PCAP_RECORD_USUAL = 140, /* heads and a usual datagram               */
     PCAP_SNAPLEN = 262144
 };
 

@@ -264,7 +264,7 @@ START_TEST(a_description_names_rig_build_tracks_and_sensors)
     line[len] = '\0';
     ck_assert_str_eq(
         line, "{\"type\":\"description\",\"rig\":\"carriage \\\"day\\\"\","
-              "\"wire\":1,\"engine\":1,\"build\":\"0.1.0+abc\","
+              "\"wire\":1,\"engine\":2,\"build\":\"0.1.0+abc\","
               "\"rig_hash\":\"00ff\",\"P\":\"lower triangle by rows\","
               "\"tracks\":[{\"id\":\"carriage\",\"states\":["
               "{\"name\":\"x\",\"unit\":\"m\"},"
