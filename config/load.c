@@ -88,6 +88,8 @@ static void load_tree(struct loading *l)
     loading_check(l);
     loading_tracks(l);
     loading_sensors(l);
+    loading_track_values(l);
+    loading_check_starts(l);
     loading_host(l);
 }
 

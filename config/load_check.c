@@ -133,9 +133,6 @@ static bool is_planned_form(const cJSON *node, const struct table_row *row)
 {
     if (!cJSON_IsObject(node))
         return false;
-    if (strcmp(row->path, "sensors.*.u") == 0)
-        return loading_get(node, "fixed") != NULL ||
-               loading_get(node, "relative") != NULL;
     return strcmp(row->path, "sensors.*.time.delay") == 0 &&
            loading_get(node, "mean") != NULL;
 }

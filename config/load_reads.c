@@ -10,6 +10,7 @@ struct reading {
     const struct rig_kind *kind;
     struct rig_sensor *s;
     char (*units)[RIG_UNIT_SIZE];
+    const char *own_unit; /* that the sensor declares, "1" if none         */
 };
 
 static void unknown_state(const struct reading *c, const cJSON *at, bool at_key,
@@ -139,13 +140,7 @@ static bool coordinate(const struct reading *c, const cJSON *node,
                       text, c->kind->state[i].unit, unit);
         return false;
     }
-    if (c->kind->state[i].has_prior)
-        return true;
-    loading_error(c->l, node,
-                  "starting ranges from data is not built yet; "
-                  "give tracks.%s%s.start of \"%s\"",
-                  c->kind->id, c->kind->is_prefix ? "*" : "", text);
-    return false;
+    return true;
 }
 
 /* The coordinates and "from" of a range or bearing into a row. */
@@ -261,11 +256,127 @@ static void read_place(const struct reading *c, const cJSON *object,
     sense(c, object, row);
 }
 
+/* {"product": ["wheel", "x.rate", 2]}: the unit is that of all states. */
+static void read_product(const struct reading *c, const cJSON *form)
+{
+    const cJSON *node;
+    char unit[4 * RIG_UNIT_SIZE] = "";
+    struct reads_row *row = add_row(c, form, READS_PRODUCT, "1");
+    if (row == NULL)
+        return;
+    cJSON_ArrayForEach(node, form)
+    {
+        int i = loading_state(c->kind, loading_text(node));
+        if (i < 0 && !cJSON_IsNumber(node)) {
+            unknown_state(c, node, false, loading_text(node));
+            return;
+        }
+        if (row->n_terms == READS_TERMS_MAX) {
+            loading_error(c->l, node, "too many factors; leave some out");
+            return;
+        }
+        row->term[row->n_terms++] =
+            (struct reads_term){i, i < 0 ? node->valuedouble : 0};
+        size_t len = strlen(unit);
+        const char *own = i < 0 ? "1" : c->kind->state[i].unit;
+        if (strcmp(own, "1") != 0 && len < sizeof unit)
+            snprintf(unit + len, sizeof unit - len, "%s(%s)",
+                     len > 0 ? "." : "", own);
+    }
+    /* One factor with a unit needs no brackets. */
+    size_t len = strlen(unit);
+    char *text = c->units[c->s->reads.m - 1];
+    if (len == 0)
+        return;
+    bool is_one = strchr(unit, ')') == unit + len - 1;
+    if (len - 2 * is_one >= RIG_UNIT_SIZE)
+        loading_error(c->l, form,
+                      "the unit of this product is too long; "
+                      "declare states in shorter units");
+    else
+        snprintf(text, RIG_UNIT_SIZE, "%.*s", (int)(len - 2 * is_one),
+                 unit + is_one);
+}
+
+/* {"polynomial": "T", "coefficients": [0.1, "gain"]}: in the sensor's unit. */
+static void read_polynomial(const struct reading *c, const cJSON *object,
+                            const cJSON *form)
+{
+    static const char *const keys[] = {"polynomial", "coefficients", NULL};
+    const cJSON *list = loading_get(object, "coefficients"), *node;
+    int state = loading_state(c->kind, loading_text(form));
+    struct reads_row *row;
+    cJSON_ArrayForEach(node, object)
+    {
+        if (strcmp(node->string, keys[0]) != 0 &&
+            strcmp(node->string, keys[1]) != 0)
+            loading_unknown(c->l, node, true, "setting", node->string, keys);
+    }
+    if (state < 0) {
+        unknown_state(c, form, false, loading_text(form));
+        return;
+    }
+    int n = cJSON_GetArraySize(list);
+    if (!cJSON_IsArray(list) || n < 1 || n >= READS_TERMS_MAX) {
+        loading_error(c->l, list != NULL ? list : object,
+                      "\"coefficients\" must list 1 to %d numbers or states, "
+                      "that of power 0 first; write it like [0.1, \"gain\"]",
+                      READS_TERMS_MAX - 1);
+        return;
+    }
+    row = add_row(c, form, READS_POLYNOMIAL, c->own_unit);
+    if (row == NULL)
+        return;
+    row->term[row->n_terms++] = (struct reads_term){state, 0};
+    cJSON_ArrayForEach(node, list)
+    {
+        int i = loading_state(c->kind, loading_text(node));
+        if (i < 0 && !cJSON_IsNumber(node)) {
+            unknown_state(c, node, false, loading_text(node));
+            return;
+        }
+        row->term[row->n_terms++] =
+            (struct reads_term){i, i < 0 ? node->valuedouble : 0};
+    }
+}
+
+/* Behind the coordinates their rates: those of states, 0 of constants. */
+static void read_range_rate(const struct reading *c, const cJSON *object,
+                            const cJSON *form)
+{
+    int n = cJSON_GetArraySize(form);
+    const char *unit = unit_of(c, form);
+    char name[RIG_ID_SIZE + 8], rate_unit[RIG_UNIT_SIZE];
+    refuse_others(c, object, form, false);
+    if (n < 2 || n > 3 || unit == NULL) {
+        loading_error(c->l, form,
+                      "\"range-rate\" must list 2 or 3 coordinates, at least "
+                      "one of them a state; write it like [\"x\", \"y\"]");
+        return;
+    }
+    quantity_derivative_unit(unit, 1, rate_unit, sizeof rate_unit);
+    struct reads_row *row = add_row(c, form, READS_RANGE_RATE, rate_unit);
+    if (row == NULL || !place(c, object, form, unit, row))
+        return;
+    for (int k = 0; k < n; k++) {
+        row->term[n + k] = (struct reads_term){-1, 0};
+        if (row->term[k].state < 0)
+            continue;
+        snprintf(name, sizeof name, "%s.rate",
+                 c->kind->state[row->term[k].state].name);
+        row->term[n + k].state = loading_state(c->kind, name);
+        if (row->term[n + k].state < 0)
+            loading_error(c->l, form,
+                          "\"%s\" has no rate; a range-rate needs a model "
+                          "with one, like constant-velocity",
+                          c->kind->state[row->term[k].state].name);
+    }
+}
+
 /* True if the object is a form that is known but not built. */
 static bool is_planned(const struct reading *c, const cJSON *object)
 {
-    static const char *const planned[] = {
-        "range-rate", "product", "polynomial", "change", "mean", "expression"};
+    static const char *const planned[] = {"change", "mean", "expression"};
     for (int i = 0; i < (int)(sizeof planned / sizeof *planned); i++) {
         const cJSON *node = loading_get(object, planned[i]);
         if (node == NULL || loading_state(c->kind, planned[i]) >= 0)
@@ -307,14 +418,76 @@ static void read_one(const struct reading *c, const cJSON *node)
             return;
         }
     }
-    if (!is_planned(c, node))
+    const cJSON *product = loading_get(node, "product");
+    const cJSON *polynomial = loading_get(node, "polynomial");
+    const cJSON *rate = loading_get(node, "range-rate");
+    if (cJSON_IsArray(product))
+        read_product(c, product);
+    else if (cJSON_IsString(polynomial))
+        read_polynomial(c, node, polynomial);
+    else if (cJSON_IsArray(rate))
+        read_range_rate(c, node, rate);
+    else if (product != NULL && loading_state(c->kind, "product") < 0)
+        loading_error(c->l, product,
+                      "\"product\" must be a list of states and "
+                      "numbers; write it like [\"scale\", "
+                      "\"x.rate\"]");
+    else if (polynomial != NULL && loading_state(c->kind, "polynomial") < 0)
+        loading_error(c->l, polynomial,
+                      "\"polynomial\" must name a state; "
+                      "write it like \"T\"");
+    else if (rate != NULL && loading_state(c->kind, "range-rate") < 0)
+        loading_error(c->l, rate,
+                      "\"range-rate\" must be a list of "
+                      "coordinates; write it like [\"x\", \"y\"]");
+    else if (!is_planned(c, node))
         read_sum(c, node);
 }
 
-bool loading_reads(struct loading *l, const cJSON *node, struct rig_sensor *s,
+/* What is seen from a place starts from a prior. */
+static void check_start(struct loading *l, const cJSON *sensor,
+                        const struct rig_sensor *s)
+{
+    const struct rig_kind *kind = &l->s->rig.kind[s->kind];
+    for (int i = 0; i < s->reads.m; i++) {
+        const struct reads_row *row = &s->reads.row[i];
+        if (row->kind != READS_RANGE && row->kind != READS_BEARING &&
+            row->kind != READS_RANGE_RATE)
+            continue;
+        for (int k = 0; k < row->n_terms; k++) {
+            int state = row->term[k].state;
+            if (state < 0 || kind->state[state].has_prior)
+                continue;
+            loading_error(l, loading_get(sensor, "reads"),
+                          "starting ranges from data is not built yet; "
+                          "give tracks.%s%s.start of \"%s\"",
+                          kind->id, kind->is_prefix ? "*" : "",
+                          kind->state[state].name);
+            return;
+        }
+    }
+}
+
+void loading_check_starts(struct loading *l)
+{
+    const cJSON *node;
+    if (l->problems->n > 0)
+        return;
+    cJSON_ArrayForEach(node, loading_get(l->root, "sensors"))
+    {
+        int i = rig_find_sensor(&l->s->rig, node->string, strlen(node->string));
+        if (i >= 0 && cJSON_IsObject(node))
+            check_start(l, node, &l->s->rig.sensor[i]);
+    }
+}
+
+bool loading_reads(struct loading *l, const cJSON *sensor, struct rig_sensor *s,
                    char units[READS_MAX][RIG_UNIT_SIZE])
 {
-    const struct reading c = {l, &l->s->rig.kind[s->kind], s, units};
+    const cJSON *node = loading_get(sensor, "reads");
+    const char *unit = loading_text(loading_get(sensor, "unit"));
+    const struct reading c = {l, &l->s->rig.kind[s->kind], s, units,
+                              unit[0] != '\0' ? unit : "1"};
     const cJSON *each;
     int n = l->problems->n;
     if (cJSON_IsArray(node) && node->child == NULL)

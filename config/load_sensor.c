@@ -11,8 +11,8 @@
 
 /* The i-th of a list, or the one value for all; NULL and a report when the
  * list has another length than the sensor components. */
-static const cJSON *component(struct loading *l, const cJSON *node, int i,
-                              int m)
+const cJSON *loading_component(struct loading *l, const cJSON *node, int i,
+                               int m)
 {
     if (!cJSON_IsArray(node))
         return node;
@@ -74,7 +74,7 @@ static void unit_of(struct loading *l, const cJSON *object,
                     struct rig_sensor *s, int i, const char *reads)
 {
     const cJSON *node =
-        component(l, loading_get(object, "unit"), i, s->reads.m);
+        loading_component(l, loading_get(object, "unit"), i, s->reads.m);
     const char *unit = cJSON_IsString(node) ? node->valuestring : reads;
     struct err err;
     s->scale[i] = 1;
@@ -90,14 +90,37 @@ static void unit_of(struct loading *l, const cJSON *object,
         loading_error(l, node, "%s", err.text);
 }
 
+/* "u": {"fixed": .., "relative": ..}. */
+static bool relative_of(struct loading *l, const cJSON *node,
+                        struct rig_sensor *s, int i)
+{
+    const cJSON *fixed = loading_get(node, "fixed");
+    const cJSON *relative = loading_get(node, "relative");
+    if (fixed == NULL || relative == NULL || cJSON_GetArraySize(node) != 2) {
+        loading_error(l, node,
+                      "\"u\" as an object needs \"fixed\" and \"relative\"; "
+                      "write it like {\"fixed\": \"2 mm\", \"relative\": "
+                      "\"0.1 %%\"}");
+        return false;
+    }
+    s->has_relative = true;
+    return loading_size(l, relative, "1", false, &s->relative[i]);
+}
+
 /* r of component i from u and the resolution. */
 static void spread_of(struct loading *l, const cJSON *object,
                       struct rig_sensor *s, int i)
 {
-    const cJSON *node = component(l, loading_get(object, "u"), i, s->reads.m);
+    const cJSON *node =
+        loading_component(l, loading_get(object, "u"), i, s->reads.m);
     const cJSON *step =
-        component(l, loading_get(object, "resolution"), i, s->reads.m);
+        loading_component(l, loading_get(object, "resolution"), i, s->reads.m);
     double u, resolution = 0;
+    if (cJSON_IsObject(node)) {
+        if (!relative_of(l, node, s, i))
+            return;
+        node = loading_get(node, "fixed");
+    }
     if (node == NULL ||
         !loading_quantity(l, node, s->unit[i], QUANTITY_DIFFERENCE, &u))
         return;
@@ -189,7 +212,7 @@ static void add_sensor(struct loading *l, const cJSON *node,
     s->kind = kind_of(l, node);
     if (s->kind < 0 || reads == NULL || l->s->rig.kind[s->kind].n == 0 ||
         cJSON_IsBool(reads) || cJSON_IsNull(reads) ||
-        !loading_reads(l, reads, s, units))
+        !loading_reads(l, node, s, units))
         return;
     int problems = l->problems->n;
     for (int i = 0; i < s->reads.m; i++)
@@ -198,6 +221,8 @@ static void add_sensor(struct loading *l, const cJSON *node,
         return; /* u is in that unit */
     for (int i = 0; i < s->reads.m; i++)
         spread_of(l, node, s, i);
+    if (l->problems->n == problems)
+        loading_errors(l, node, s, units);
 }
 
 static int by_name(const void *a, const void *b)

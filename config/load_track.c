@@ -127,14 +127,28 @@ static void add_track(struct loading *l, const cJSON *node,
     const cJSON *recover = loading_get(node, "recover");
     loading_time(l, loading_get(node, "lost"), "tracks.*.lost.after", 0,
                  &kind->lost_after_ns);
-    loading_integer(l, recover, "tracks.*.recover.refused", 1, 1000000,
+    loading_integer(l, recover, "tracks.*.recover.refused", 1, 65535,
                     &kind->recover_refused);
     loading_time(l, recover, "tracks.*.recover.for", 0, &kind->recover_for_ns);
-    if (kind->n_blocks == 0 || l->problems->n != n)
-        return; /* its states are not all known */
-    start(l, loading_get(node, "start"), kind);
-    kind->has_good = spreads(l, loading_get(node, "good"), kind, true);
-    spreads(l, loading_get(node, "lost"), kind, false);
+    l->is_sound[kind - l->s->rig.kind] =
+        kind->n_blocks > 0 && l->problems->n == n;
+}
+
+void loading_track_values(struct loading *l)
+{
+    const cJSON *node;
+    struct rig_kind *kind = l->s->rig.kind;
+    cJSON_ArrayForEach(node, loading_get(l->root, "tracks"))
+    {
+        if (!cJSON_IsObject(node) || kind == l->s->rig.kind + l->s->rig.n_kinds)
+            continue;
+        if (l->is_sound[kind - l->s->rig.kind]) {
+            start(l, loading_get(node, "start"), kind);
+            kind->has_good = spreads(l, loading_get(node, "good"), kind, true);
+            spreads(l, loading_get(node, "lost"), kind, false);
+        }
+        kind++;
+    }
 }
 
 void loading_tracks(struct loading *l)

@@ -34,6 +34,7 @@ struct loading {
     int n_changes;
     cJSON *root;
     bool is_out_of_memory;
+    bool is_sound[RIG_KINDS_MAX]; /* tracks whose states are all known     */
     int n_marks;
     struct {
         long place; /* order among reports: offset, then changes        */
@@ -97,9 +98,20 @@ void loading_noise(struct loading *l, const cJSON *node, struct block *b,
 /* The unit of q: the state unit squared, over seconds to the power. */
 void loading_density_unit(const char *unit, int seconds, char *out,
                           size_t size);
+/* load_track.c: starts and limits, when all states are there. */
+void loading_track_values(struct loading *l);
+/* load_sensor.c: the i-th of a list, or the one value for all m components. */
+const cJSON *loading_component(struct loading *l, const cJSON *node, int i,
+                               int m);
+/* load_error.c: what stands between what is read and the reading; `units` are
+ * those of what is read. */
+void loading_errors(struct loading *l, const cJSON *sensor,
+                    struct rig_sensor *s, char units[READS_MAX][RIG_UNIT_SIZE]);
+/* load_reads.c: what is read from far needs a start, until that is built. */
+void loading_check_starts(struct loading *l);
 /* Fills s->reads and the unit of each row ("rad" for a bearing); false if
  * anything was reported. */
-bool loading_reads(struct loading *l, const cJSON *node, struct rig_sensor *s,
+bool loading_reads(struct loading *l, const cJSON *sensor, struct rig_sensor *s,
                    char units[READS_MAX][RIG_UNIT_SIZE]);
 
 /* Index of a state of the kind, or -1. */

@@ -152,6 +152,34 @@ static void append_place(const struct rig_kind *kind,
     append(out, size, ")");
 }
 
+static void append_list(const struct rig_kind *kind,
+                        const struct reads_row *row, int from,
+                        const char *between, char *out, size_t size)
+{
+    for (int k = from; k < row->n_terms; k++) {
+        append(out, size, "%s", k > from ? between : "");
+        if (row->term[k].state < 0)
+            append(out, size, "%g", row->term[k].value);
+        else
+            append(out, size, "%s", kind->state[row->term[k].state].name);
+    }
+}
+
+static void append_error(const struct rig_kind *kind,
+                         const struct reads_error *e, char *out, size_t size)
+{
+    if (!e->has_any)
+        return;
+    if (e->scale >= 0)
+        append(out, size, ", times %s", kind->state[e->scale].name);
+    if (e->factor < 1 || e->factor > 1)
+        append(out, size, ", times %g", e->factor);
+    for (int k = 0; k < e->n_added; k++)
+        append(out, size, " + %s", kind->state[e->added[k]].name);
+    if (e->constant < 0 || e->constant > 0)
+        append(out, size, " %+g", e->constant);
+}
+
 void rig_text_reads(const struct rig_kind *kind, const struct reads *reads,
                     int i, char *out, size_t size)
 {
@@ -169,9 +197,27 @@ void rig_text_reads(const struct rig_kind *kind, const struct reads *reads,
         append(out, size, "bearing ");
         append_place(kind, row, out, size);
         append(out, size, ", zero at %g deg, turning %s",
-               row->zero_rad * 180 / REAL_PI, row->turn < 0 ? "back" : "on");
+               row->zero_rad * 180 / REAL_PI, row->turn < 0 ? "right" : "left");
+        break;
+    case READS_RANGE_RATE:
+        append(out, size, "range-rate ");
+        append_place(kind, row, out, size);
+        break;
+    case READS_PRODUCT:
+        append_list(kind, row, 0, " * ", out, size);
+        break;
+    case READS_POLYNOMIAL:
+        append(out, size, "polynomial of %s, coefficients ",
+               kind->state[row->term[0].state].name);
+        append_list(kind, row, 1, ", ", out, size);
         break;
     }
+    append_error(kind, &row->error, out, size);
+}
+
+bool rig_text_is_of_sensor(const struct rig_kind *kind, const struct block *b)
+{
+    return strchr(kind->state[b->at].name, '.') != NULL;
 }
 
 double rig_text_u(const struct rig_sensor *sensor, int i)

@@ -3,6 +3,8 @@
 #ifndef TOOLS_RIG_TEXT_H
 #define TOOLS_RIG_TEXT_H
 
+#include <stdbool.h>
+
 #include "core/model/rig.h"
 
 enum { RIG_TEXT_SIZE = 256 };
@@ -38,5 +40,9 @@ void rig_text_bytes(double bytes, char *out, size_t size);
  * track going there: below recover.refused refusals or recover.for it is not
  * widened.  Seconds. */
 double rig_text_burst_s(const struct rig *rig, int kind);
+
+/* True for a block that is the error of a sensor: its state is named
+ * SENSOR.WHAT, and no block's own name has a dot. */
+bool rig_text_is_of_sensor(const struct rig_kind *kind, const struct block *b);
 
 #endif

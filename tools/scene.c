@@ -267,23 +267,103 @@ int scene_find_track(const struct scene *s, const char *id)
     return -1;
 }
 
+/* One block's states at t. */
+static void block_truth(struct scene *s, struct scene_track *t, int i,
+                        int64_t t_ns, double out[4])
+{
+    const struct block *b = &s->rig->kind[t->kind].block[i];
+    struct scene_block *truth = &t->block[i];
+    const struct scene_piece *p = piece_at(truth, t_ns);
+    double wander[4] = {0};
+    glide(p->c, seconds(t_ns - p->at_ns), out);
+    if (truth->q > 0 && t_ns >= 0) {
+        wander_to(s, t, i, t_ns);
+        wander_after(b, &truth->wander,
+                     seconds(t_ns - truth->wander.step * SCENE_STEP_NS),
+                     wander);
+    }
+    for (int k = 0; k < b->n; k++)
+        out[k] += wander[k];
+}
+
+static double state_truth(struct scene *s, struct scene_track *t, int state,
+                          int64_t t_ns)
+{
+    const struct rig_kind *kind = &s->rig->kind[t->kind];
+    double x[4];
+    int k = 0;
+    while (state >= kind->block[k].at + kind->block[k].n)
+        k++;
+    block_truth(s, t, k, t_ns, x);
+    return x[state - kind->block[k].at];
+}
+
+/* --- what follows slowly ----------------------------------------------------
+ */
+
+/* What the lag of this block goes towards. */
+static double followed(struct scene *s, struct scene_track *t, int block,
+                       int64_t t_ns)
+{
+    const struct rig_kind *kind = &s->rig->kind[t->kind];
+    const struct block *b = &kind->block[block];
+    double sum = 0;
+    for (int i = 0; i < kind->n_couplings; i++)
+        if (kind->coupling[i].state == b->at)
+            sum += kind->coupling[i].rate * b->tau_s *
+                   state_truth(s, t, kind->coupling[i].on, t_ns);
+    return sum;
+}
+
+/* y' = (target - y) / tau over one step, the target taken at its middle. */
+static void follow_step(struct scene *s, struct scene_track *t, int block)
+{
+    const struct block *b = &s->rig->kind[t->kind].block[block];
+    struct scene_wander *w = &t->block[block].wander;
+    int64_t middle_ns = w->step * SCENE_STEP_NS + SCENE_STEP_NS / 2;
+    double part = -real_expm1(-seconds(SCENE_STEP_NS) / b->tau_s);
+    w->c[0] += part * (followed(s, t, block, middle_ns) - w->c[0]);
+    w->step++;
+}
+
+/* All that follows goes step by step together: what is followed wanders
+ * forward only. */
+static void follow_to(struct scene *s, struct scene_track *t, int64_t t_ns)
+{
+    const struct rig_kind *kind = &s->rig->kind[t->kind];
+    int64_t step = t_ns < 0 ? 0 : t_ns / SCENE_STEP_NS, from = step;
+    for (int i = 0; i < kind->n_blocks; i++) {
+        struct scene_wander *w = &t->block[i].wander;
+        if (kind->block[i].model != BLOCK_LAG)
+            continue;
+        if (w->step < 0 || w->step > step) {
+            w->step = 0;
+            w->c[0] = followed(s, t, i, 0); /* at rest before           */
+        }
+        from = w->step < from ? w->step : from;
+    }
+    for (int64_t k = from; k < step; k++)
+        for (int i = 0; i < kind->n_blocks; i++)
+            if (kind->block[i].model == BLOCK_LAG)
+                follow_step(s, t, i);
+}
+
 void scene_truth(struct scene *s, int track, int64_t t_ns, double *x)
 {
     struct scene_track *t = &s->track[track];
     const struct rig_kind *kind = &s->rig->kind[t->kind];
+    follow_to(s, t, t_ns);
     for (int i = 0; i < kind->n_blocks; i++) {
         const struct block *b = &kind->block[i];
-        struct scene_block *truth = &t->block[i];
-        const struct scene_piece *p = piece_at(truth, t_ns);
-        double script[4], wander[4] = {0};
-        glide(p->c, seconds(t_ns - p->at_ns), script);
-        if (truth->q > 0 && t_ns >= 0) {
-            wander_to(s, t, i, t_ns);
-            wander_after(b, &truth->wander,
-                         seconds(t_ns - truth->wander.step * SCENE_STEP_NS),
-                         wander);
+        double own[4];
+        if (b->model == BLOCK_LAG) {
+            const struct scene_wander *w = &t->block[i].wander;
+            double left_s = seconds(t_ns - w->step * SCENE_STEP_NS);
+            own[0] = w->c[0] - real_expm1(-left_s / b->tau_s) *
+                                   (followed(s, t, i, t_ns) - w->c[0]);
+        } else {
+            block_truth(s, t, i, t_ns, own);
         }
-        for (int k = 0; k < b->n; k++)
-            x[b->at + k] = script[k] + wander[k];
+        memcpy(x + b->at, own, (size_t)b->n * sizeof *own);
     }
 }

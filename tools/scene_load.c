@@ -107,12 +107,28 @@ static void load_start(struct loader *l, const cJSON *start)
     }
 }
 
+static int count_blocks(const struct rig_kind *kind)
+{
+    int n = 0;
+    for (int i = 0; i < kind->n_blocks; i++)
+        n += !rig_text_is_of_sensor(kind, &kind->block[i]);
+    return n;
+}
+
 /* Without a start: the rig's prior, what the block returns to, or 0. */
 static void default_start(struct loader *l)
 {
     for (int i = 0; i < l->kind->n; i++)
         if (l->kind->state[i].has_prior)
             l->track->start[i] = l->kind->state[i].prior_mean;
+    for (int i = 0; i < l->kind->n_blocks; i++) {
+        const struct block *b = &l->kind->block[i];
+        if (!rig_text_is_of_sensor(l->kind, b))
+            continue;
+        if (b->model == BLOCK_CONSTANT) /* drawn once */
+            l->track->start_u[b->at] = l->kind->state[b->at].prior_u;
+        l->track->block[i].q = b->q;
+    }
 }
 
 /* --- moves ---------------------------------------------------------------- */
@@ -141,7 +157,7 @@ static int move_kind(struct loader *l, const cJSON *item)
 static int move_block(struct loader *l, const cJSON *item)
 {
     const cJSON *of = cJSON_GetObjectItemCaseSensitive(item, "of");
-    if (of == NULL && l->kind->n_blocks == 1)
+    if (of == NULL && count_blocks(l->kind) == 1)
         return 0;
     if (of == NULL) {
         scene_text_refuse(&l->text, "add \"of\": and a block's name",

@@ -38,10 +38,43 @@ static double bearing(const struct reads_row *row, const double to[3])
     return real_atan2(aside, ahead);
 }
 
-double scene_sensor_truth(const struct rig_sensor *sensor, int i,
-                          const double *x)
+static double of(const struct reads_term *term, const double *x)
 {
-    const struct reads_row *row = &sensor->reads.row[i];
+    return term->state >= 0 ? x[term->state] : term->value;
+}
+
+/* The part of the motion that points away from the sensor. */
+static double receding(const struct reads_row *row, const double *x)
+{
+    double to[3], along = 0, square = 0;
+    look(row, x, to);
+    for (int k = 0; k < row->n_terms; k++) {
+        along += to[k] * of(&row->term[row->n_terms + k], x);
+        square += to[k] * to[k];
+    }
+    return square > 0 ? along / sqrt(square) : 0;
+}
+
+static double multiplied(const struct reads_row *row, const double *x)
+{
+    double z = 1;
+    for (int k = 0; k < row->n_terms; k++)
+        z *= of(&row->term[k], x);
+    return z;
+}
+
+static double powers(const struct reads_row *row, const double *x)
+{
+    double z = 0, power = 1;
+    for (int k = 1; k < row->n_terms; k++) {
+        z += power * of(&row->term[k], x);
+        power *= of(&row->term[0], x);
+    }
+    return z;
+}
+
+static double without_error(const struct reads_row *row, const double *x)
+{
     double to[3];
     switch (row->kind) {
     case READS_LINEAR:
@@ -52,8 +85,28 @@ double scene_sensor_truth(const struct rig_sensor *sensor, int i,
     case READS_BEARING:
         look(row, x, to);
         return bearing(row, to);
+    case READS_RANGE_RATE:
+        return receding(row, x);
+    case READS_PRODUCT:
+        return multiplied(row, x);
+    case READS_POLYNOMIAL:
+        return powers(row, x);
     }
     return 0;
+}
+
+double scene_sensor_truth(const struct rig_sensor *sensor, int i,
+                          const double *x)
+{
+    const struct reads_row *row = &sensor->reads.row[i];
+    const struct reads_error *e = &row->error;
+    double z = without_error(row, x);
+    if (!e->has_any)
+        return z;
+    z *= e->factor * (e->scale >= 0 ? x[e->scale] : 1);
+    for (int k = 0; k < e->n_added; k++)
+        z += x[e->added[k]];
+    return z + e->constant;
 }
 
 /* --- sampling ------------------------------------------------------------- */
@@ -96,8 +149,10 @@ bool scene_sensor_sample(struct scene_sensor *p, struct scene *s,
     p->n++;
     scene_truth(s, p->track, reading->t_ns, x);
     for (int i = 0; i < sensor->reads.m; i++) {
-        double value = scene_sensor_truth(sensor, i, x) +
-                       sqrt(sensor->r[i]) * random_normal(&p->noise);
+        double truth = scene_sensor_truth(sensor, i, x);
+        double part = sensor->relative[i] * (truth - sensor->shift[i]);
+        double value =
+            truth + sqrt(sensor->r[i] + part * part) * random_normal(&p->noise);
         if (sensor->reads.row[i].kind == READS_BEARING)
             value = fold(value);
         reading->z[i] = (value - sensor->shift[i]) / sensor->scale[i];

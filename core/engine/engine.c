@@ -128,7 +128,7 @@ void engine_start(struct engine *e, int64_t line_ns)
 
 static struct lay laying(struct engine *e)
 {
-    return (struct lay){e->rig, e->work, &e->steps};
+    return (struct lay){e->rig, e->work, e->local, &e->steps};
 }
 
 /* n_before: steps that were laid before the newest arrivals went in. */
@@ -165,12 +165,56 @@ static void count_settled(struct engine *e, struct track *t, struct step *s)
     kf_total_add(&t->total, s->dof, s->nis_used, s->v + t->m_max);
 }
 
+static void let_in(struct engine *e, struct track *t);
+
+/* The next step to settle comes so long after the one before that the track
+ * was retired in between: nothing earlier can come any more. */
+static bool is_anew(const struct track *t)
+{
+    int i = t->n_settled;
+    if (!t->kind->is_prefix || i == 0)
+        return false;
+    return track_step(t, i)->t_ns - track_step(t, i - 1)->t_ns >
+           t->kind->lost_after_ns + TRACK_RETIRE_NS;
+}
+
+static void begin_anew(struct engine *e, struct track *t)
+{
+    int n;
+    speak_event(e, EVENT_RETIRED, t, -1, e->now_ns);
+    while (t->n_settled > 0) {
+        track_drop_first(t);
+        t->n_settled--;
+    }
+    t->n_laid = 0;
+    t->scratch_at = -1;
+    memset(t->base, 0, t->state_bytes);
+    t->n_final = t->n_live = 0;
+    t->n_aside = 0;
+    memset(&t->live, 0, sizeof t->live);
+    memset(&t->settled, 0, sizeof t->settled);
+    engine_sensors(e, t, &n);
+    for (int k = 0; k < n; k++) {
+        t->watch[k].settled_t_ns = INT64_MIN;
+        t->watch[k].is_aside = false;
+        t->watch[k].refused = t->watch[k].agreed = 0;
+    }
+    track_confirm(t);
+}
+
 static void settle(struct engine *e, struct track *t, int64_t before_ns)
 {
     struct lay lay = laying(e);
     for (int next; (next = track_next_settled(t)) >= 0 &&
                    track_step(t, next)->t_ns < before_ns;) {
         const struct track_state *st;
+        if (is_anew(t)) {
+            begin_anew(e, t);
+            if (!t->is_confirmed)
+                return;
+            let_in(e, t);
+            continue;
+        }
         struct step *s = track_settle(t, &lay, &st);
         count_settled(e, t, s);
         aside_weigh(e, t, s);
@@ -251,9 +295,10 @@ void engine_end(struct engine *e)
 static void retire(struct engine *e, struct track *t)
 {
     const struct track_state *tip = track_tip(t);
-    if (!t->kind->is_prefix || !t->is_confirmed || t->n > t->n_settled || !tip)
+    if (!t->kind->is_prefix || !t->is_confirmed || t->n > t->n_settled)
         return;
-    if (e->now_ns - tip->kf.t_ns <=
+    int64_t since_ns = tip ? tip->kf.t_ns : e->line_start_ns;
+    if (e->now_ns - since_ns <=
         t->kind->lost_after_ns + TRACK_RETIRE_NS + e->rig->horizon_ns)
         return;
     speak_event(e, EVENT_RETIRED, t, -1, e->now_ns);
@@ -303,10 +348,11 @@ void engine_reanchor(struct engine *e, int64_t line_ns)
         struct track *t = &e->roster.track[e->roster.by_id[i]];
         int n;
         engine_sensors(e, t, &n);
-        track_reanchor(t, e->work);
+        track_reanchor(t, e->rig, e->work);
         for (int k = 0; k < n; k++) {
             t->watch[k].heard_ns += line_ns - was_ns;
             t->watch[k].settled_t_ns = INT64_MIN;
+            t->watch[k].refused = t->watch[k].agreed = 0;
         }
         t->used_ns += line_ns - was_ns;
         t->live.is_started = t->settled.is_started = false;

@@ -11,6 +11,7 @@
 /* Numbers seen from one sensor's `seq`, for loss and conflicts. */
 struct seq_window {
     bool has_any;
+    uint64_t first; /* nothing before it was counted as lost          */
     uint64_t greatest;
     uint64_t seen; /* bit k: greatest - k was seen                    */
 };

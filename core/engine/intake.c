@@ -63,11 +63,12 @@ static bool is_scaled(int64_t t_ns)
            (t_ns > least_ms * 1000 && t_ns < most_ms * 1000);
 }
 
-static bool is_implausible(const struct engine *e, const struct measurement *m,
-                           const char **why)
+static bool is_implausible(const struct engine *e, const struct rig_sensor *s,
+                           const struct measurement *m, const char **why)
 {
     for (int i = 0; i < m->n_z && i < READS_MAX; i++) {
-        if (real_abs(m->z[i]) > z_max) {
+        double z = m->z[i] * s->scale[i] + s->shift[i];
+        if (real_abs(m->z[i]) > z_max || real_abs(z) > z_max) {
             *why = "z is not a possible number: send null where there is no "
                    "reading";
             return true;
@@ -113,7 +114,7 @@ static enum outcome examine(struct engine *e, const struct measurement *m,
         return refuse(e, OUTCOME_UNKNOWN_SENSOR,
                       "no sensor of this name: add it to the rig file");
     const struct rig_sensor *s = &e->rig->sensor[d->sensor];
-    if (is_implausible(e, m, &why))
+    if (is_implausible(e, s, m, &why))
         return refuse(e, OUTCOME_IMPLAUSIBLE, why);
     if (m->n_z != 0 && m->n_z != s->reads.m)
         return refuse(e, OUTCOME_WRONG_SIZE,
@@ -148,7 +149,7 @@ static bool seq_seen(struct engine *e, int sensor, uint64_t seq)
         w->has_any && (seq > w->greatest ? seq - w->greatest > SEQ_JUMP_MAX
                                          : w->greatest - seq > SEQ_JUMP_MAX);
     if (!w->has_any || is_far) {
-        *w = (struct seq_window){true, seq, 1};
+        *w = (struct seq_window){true, seq, seq, 1};
         return false;
     }
     if (seq > w->greatest) {
@@ -160,7 +161,7 @@ static bool seq_seen(struct engine *e, int sensor, uint64_t seq)
         return false;
     }
     uint64_t behind = w->greatest - seq;
-    if (behind >= 64)
+    if (behind >= 64 || seq < w->first)
         return false;
     if (w->seen >> behind & 1)
         return true;

@@ -189,9 +189,11 @@ void track_drop_first(struct track *t)
 
 void track_confirm(struct track *t)
 {
-    if (!t->is_confirmed && t->n >= 2 &&
-        track_step(t, 1)->t_ns - track_step(t, 0)->t_ns <= TRACK_CANDIDATE_NS)
-        t->is_confirmed = true;
+    if (!t->kind->is_prefix || t->n_final > 0)
+        return;
+    t->is_confirmed =
+        t->n >= 2 &&
+        track_step(t, 1)->t_ns - track_step(t, 0)->t_ns <= TRACK_CANDIDATE_NS;
 }
 
 int track_next_settled(const struct track *t)

@@ -50,9 +50,12 @@ struct step {
 
 /* What a re-run depends on: lives in checkpoints, changes at measurements. */
 struct track_state {
-    int64_t refused_since_ns;
-    uint16_t refused; /* in a row                                   */
-    uint8_t widened;  /* times in a row without an accepted one     */
+    int64_t refused_since_ns, outvoted_since_ns;
+    uint64_t heard, refusing; /* sensors, by local number: when last heard  */
+    uint16_t refused;         /* in a row                                   */
+    uint16_t waited;          /* of these, since the last recovery          */
+    uint16_t outvoted;        /* refused while most sensors refuse          */
+    uint8_t widened;          /* times in a row without an accepted one     */
     uint8_t is_born;
     uint8_t is_floating; /* takes its time from the next measurement   */
     struct kf kf;
@@ -156,7 +159,8 @@ bool track_insert(struct track *t, int i, const struct step *s);
 struct lay {
     const struct rig *rig;
     struct kf_work *work;
-    uint64_t *steps; /* counted up by every filter step            */
+    const int16_t *local; /* by sensor: its number within its track   */
+    uint64_t *steps;      /* counted up by every filter step            */
 };
 
 /* Lays steps until the first with t > until_ns; returns how many. */
@@ -193,6 +197,7 @@ void track_free_checkpoint(struct track *t, struct step *s);
 
 /* The line jumped: all steps are settled; what is known stays only in the
  * constants, widened. */
-void track_reanchor(struct track *t, struct kf_work *work);
+void track_reanchor(struct track *t, const struct rig *rig,
+                    struct kf_work *work);
 
 #endif

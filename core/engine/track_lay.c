@@ -2,6 +2,8 @@
 /* SPDX-License-Identifier: Apache-2.0 */
 #include "core/engine/track.h"
 
+#include <stddef.h>
+
 /* --- laying ----------------------------------------------------------------
  */
 
@@ -25,7 +27,7 @@ static void take_time(struct track *t, const struct track_state *from,
 {
     const struct rig_kind *kind = t->kind;
     bool is_reborn =
-        kind->is_prefix && from->is_born &&
+        kind->is_prefix && from->is_born && !from->is_floating &&
         s->t_ns - from->kf.t_ns > kind->lost_after_ns + TRACK_RETIRE_NS;
     if (!from->is_born || is_reborn) {
         memset(to, 0, sizeof *to);
@@ -42,9 +44,9 @@ static void take_time(struct track *t, const struct track_state *from,
         to->is_floating = 0;
         to->kf.t_ns = s->t_ns;
     } else {
-        to->refused_since_ns = from->refused_since_ns;
-        to->refused = from->refused;
-        to->widened = from->widened;
+        size_t head = offsetof(struct track_state, kf);
+        if (to != from)
+            memcpy(to, from, head);
         to->is_born = 1;
         to->is_floating = 0;
         kf_predict(kind, lay->work, &from->kf, s->t_ns, &to->kf);
@@ -60,18 +62,58 @@ static bool can_restart(const struct rig *rig, const struct rig_kind *kind)
     return true;
 }
 
-/* All that was heard lately was refused: the track, not the sensors, must be
- * wrong.  Returns true when it was widened or restarted. */
+static int count_bits(uint64_t bits)
+{
+    int n = 0;
+    for (; bits != 0; bits &= bits - 1)
+        n++;
+    return n;
+}
+
+/* Which sensors were heard, and which were refused when last heard.  True
+ * while most refuse. */
+static bool vote(struct track_state *st, int sensor, bool is_used)
+{
+    uint64_t bit = sensor < 64 ? (uint64_t)1 << sensor : 0;
+    st->heard |= bit;
+    st->refusing = is_used ? st->refusing & ~bit : st->refusing | bit;
+    return 2 * count_bits(st->refusing) > count_bits(st->heard);
+}
+
+static uint16_t count_up(uint16_t *n)
+{
+    if (*n < UINT16_MAX)
+        ++*n;
+    return *n;
+}
+
+/* For long enough, and often enough? */
+static bool is_due(uint16_t n, int64_t since_ns, const struct rig_kind *kind,
+                   int64_t t_ns)
+{
+    return n >= kind->recover_refused &&
+           t_ns - since_ns >= kind->recover_for_ns;
+}
+
+/* All that was heard lately was refused, or most sensors refuse: the track,
+ * not the sensors, must be wrong.  Returns true when it was widened or
+ * restarted. */
 static bool recover(struct track *t, const struct lay *lay,
                     struct track_state *st, struct step *s)
 {
     const struct rig_kind *kind = t->kind;
-    if (st->refused++ == 0)
+    count_up(&st->refused);
+    if (count_up(&st->waited) == 1)
         st->refused_since_ns = s->t_ns;
-    if (st->refused < kind->recover_refused ||
-        s->t_ns - st->refused_since_ns < kind->recover_for_ns)
+    if (!vote(st, lay->local[s->sensor], false))
+        st->outvoted = 0;
+    else if (count_up(&st->outvoted) == 1)
+        st->outvoted_since_ns = s->t_ns;
+    if (!is_due(st->waited, st->refused_since_ns, kind, s->t_ns) &&
+        !is_due(st->outvoted, st->outvoted_since_ns, kind, s->t_ns))
         return false;
-    st->refused = 0;
+    st->waited = st->outvoted = 0;
+    st->refusing = 0;
     if (st->widened >= TRACK_RESTART_AFTER && can_restart(lay->rig, kind)) {
         kf_restart(kind, lay->work, &st->kf);
         st->widened = 0;
@@ -84,31 +126,52 @@ static bool recover(struct track *t, const struct lay *lay,
     return true;
 }
 
+/* Variances where u is relative to what is read, as it is predicted; what is
+ * not determined yet is read from z itself. */
+static const double *variances(const struct rig_sensor *sensor,
+                               const struct kf *kf, const double *z,
+                               struct kf_work *work, double *r)
+{
+    if (!sensor->has_relative)
+        return sensor->r;
+    for (int i = 0; i < sensor->reads.m; i++) {
+        double h = kf->n_free > 0
+                       ? z[i]
+                       : reads_row_at(&sensor->reads, i, kf->n, kf->v, work->H);
+        double u = sensor->relative[i] * (h - sensor->shift[i]);
+        r[i] = sensor->r[i] + u * u; /* r = fixed^2 + (relative h)^2 */
+    }
+    return r;
+}
+
 static void lay_step(struct track *t, const struct lay *lay,
                      const struct track_state *from, struct track_state *to,
                      struct step *s)
 {
     const struct rig_sensor *sensor = &lay->rig->sensor[s->sensor];
     const double *gate = sensor->has_gate ? sensor->gate : NULL;
-    double z[READS_MAX];
+    double z[READS_MAX], own_r[READS_MAX];
     struct kf_seen seen;
     s->flags = 0;
     for (int i = 0; i < sensor->reads.m; i++)
         z[i] = s->v[i] * sensor->scale[i] + sensor->shift[i];
     take_time(t, from, to, lay, s);
-    bool is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z,
-                             sensor->r, gate, &seen);
+    const double *r = variances(sensor, &to->kf, z, lay->work, own_r);
+    bool is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z, r,
+                             gate, &seen);
     s->nis = s->nis_used = seen.nis;
     s->dof = (uint8_t)seen.dof;
     if (!is_used && recover(t, lay, to, s)) {
-        is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z,
-                            sensor->r, gate, &seen);
+        is_used = kf_update(t->kind, lay->work, &to->kf, &sensor->reads, z, r,
+                            gate, &seen);
         s->nis_used = seen.nis;
     }
     memcpy(s->v + t->m_max, seen.s, (size_t)seen.dof * sizeof(double));
     if (is_used) {
         s->flags |= STEP_ACCEPTED;
-        to->refused = 0;
+        to->refused = to->waited = 0;
+        if (!vote(to, lay->local[s->sensor], true))
+            to->outvoted = 0;
         if (!(s->flags & STEP_WIDENED))
             to->widened = 0;
     }
@@ -191,17 +254,20 @@ struct step *track_settle(struct track *t, const struct lay *lay,
     return track_step(t, t->n_settled - 1);
 }
 
-void track_reanchor(struct track *t, struct kf_work *work)
+void track_reanchor(struct track *t, const struct rig *rig,
+                    struct kf_work *work)
 {
     const struct track_state *tip = track_tip(t);
-    if (tip) {
+    if (!can_restart(rig, t->kind)) {
+        memset(t->base, 0, t->state_bytes); /* only a start finds it again */
+    } else if (tip) {
         memcpy(t->base, tip, t->state_bytes);
         for (int i = 0; i < t->kind->n; i++)
             work->b[i] = 10;
         ud_scale(t->kind->n, kf_ud(&t->base->kf), work->b);
         kf_restart(t->kind, work, &t->base->kf);
         t->base->is_floating = 1;
-        t->base->refused = 0;
+        t->base->refused = t->base->waited = 0;
         t->base->widened = 0;
     }
     while (t->n > 0)

@@ -99,6 +99,34 @@ void kf_widen(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
     ud_scale(kind->n, kf_ud(f), w->b); /* P x 100           */
 }
 
+/* Columns that span the same; returns how many are left. */
+static int independent(int n, double *B, int n_columns)
+{
+    int n_kept = 0;
+    for (int c = 0; c < n_columns; c++) {
+        double *b = B + n * n_kept, largest = 0;
+        int row = 0;
+        memmove(b, B + n * c, (size_t)n * sizeof *b);
+        for (int i = 0; i < n; i++)
+            if (real_abs(b[i]) > largest)
+                largest = real_abs(b[row = i]);
+        if (largest == 0)
+            continue;
+        n_kept++;
+        for (int k = c + 1; k < n_columns; k++) {
+            double share = B[n * k + row] / b[row];
+            for (int i = 0; i < n; i++) {
+                double was = B[n * k + i], part = b[i] * share;
+                double left = was - part;
+                bool is_rounding =
+                    real_abs(left) <= 1e-12 * (real_abs(was) + real_abs(part));
+                B[n * k + i] = is_rounding || i == row ? 0 : left;
+            }
+        }
+    }
+    return n_kept;
+}
+
 void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
 {
     int n = kind->n, n_kept = 0;
@@ -113,6 +141,7 @@ void kf_restart(const struct rig_kind *kind, struct kf_work *w, struct kf *f)
         }
         n_kept += is_kept;
     }
+    n_kept = independent(n, w->B, n_kept);
     for (int i = 0; i < n; i++) {
         const struct rig_state *s = &kind->state[i];
         if (kind->state[i].is_constant)

@@ -203,7 +203,7 @@ bool kf_update(const struct rig_kind *kind, struct kf_work *w, struct kf *f,
             memcpy(kf_B(f), w->B, n * (size_t)n_free * sizeof(double));
         return false;
     }
-    if (!is_linear && n_free == 0)
+    if (reads_iterates(reads) && n_free == 0)
         iterate(w, f, &sight);
     return true;
 }

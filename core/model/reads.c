@@ -59,11 +59,63 @@ static double bearing(const struct reads_row *row, const double *x, double *H)
     return real_wrap(row->turn * (real_atan2(dy, dx) - row->zero_rad));
 }
 
-double reads_row_at(const struct reads *r, int i, int n, const double *x,
-                    double *H)
+static double value(const struct reads_term *t, const double *x)
 {
-    const struct reads_row *row = &r->row[i];
-    memset(H, 0, (size_t)n * sizeof *H);
+    return t->state < 0 ? t->value : x[t->state];
+}
+
+/* h = d . v / r,  dh/dp = (v - h d / r) / r,  dh/dv = d / r. */
+static double range_rate(const struct reads_row *row, const double *x,
+                         double *H)
+{
+    double d[3], square = 0, dot = 0;
+    int n = row->n_terms;
+    for (int k = 0; k < n; k++) {
+        d[k] = coordinate(row, k, x);
+        square += d[k] * d[k];
+        dot += d[k] * value(&row->term[n + k], x);
+    }
+    double r = sqrt(square);
+    if (!(r > 0))
+        return 0;
+    double h = dot / r;
+    for (int k = 0; k < n; k++) {
+        derive(row, k, (value(&row->term[n + k], x) - h * d[k] / r) / r, H);
+        derive(row, n + k, d[k] / r, H);
+    }
+    return h;
+}
+
+static double product(const struct reads_row *row, const double *x, double *H)
+{
+    double h = 1;
+    for (int k = 0; k < row->n_terms; k++) {
+        double others = 1;
+        for (int j = 0; j < row->n_terms; j++)
+            if (j != k)
+                others *= value(&row->term[j], x);
+        derive(row, k, others, H);
+        h *= value(&row->term[k], x);
+    }
+    return h;
+}
+
+static double polynomial(const struct reads_row *row, const double *x,
+                         double *H)
+{
+    double s = value(&row->term[0], x), h = 0, slope = 0, power = 1;
+    for (int k = row->n_terms - 1; k >= 1; k--) { /* Horner */
+        slope = slope * s + h;
+        h = h * s + value(&row->term[k], x);
+    }
+    derive(row, 0, slope, H);
+    for (int k = 1; k < row->n_terms; k++, power *= s)
+        derive(row, k, power, H);
+    return h;
+}
+
+static double core(const struct reads_row *row, const double *x, double *H)
+{
     switch (row->kind) {
     case READS_LINEAR:
         return linear(row, x, H);
@@ -71,8 +123,36 @@ double reads_row_at(const struct reads *r, int i, int n, const double *x,
         return range(row, x, H);
     case READS_BEARING:
         return bearing(row, x, H);
+    case READS_RANGE_RATE:
+        return range_rate(row, x, H);
+    case READS_PRODUCT:
+        return product(row, x, H);
+    case READS_POLYNOMIAL:
+        return polynomial(row, x, H);
     }
     return 0;
+}
+
+double reads_row_at(const struct reads *r, int i, int n, const double *x,
+                    double *H)
+{
+    const struct reads_row *row = &r->row[i];
+    const struct reads_error *e = &row->error;
+    memset(H, 0, (size_t)n * sizeof *H);
+    double h = core(row, x, H);
+    if (!e->has_any)
+        return h;
+    double scale = e->factor * (e->scale < 0 ? 1 : x[e->scale]);
+    for (int k = 0; k < n; k++)
+        H[k] *= scale;
+    if (e->scale >= 0)
+        H[e->scale] += e->factor * h;
+    h = scale * h + e->constant;
+    for (int k = 0; k < e->n_added; k++) {
+        H[e->added[k]] += 1;
+        h += x[e->added[k]];
+    }
+    return h;
 }
 
 double reads_difference(const struct reads *r, int i, double z, double h)

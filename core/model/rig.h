@@ -95,7 +95,9 @@ struct rig_sensor {
     struct reads reads;
     double scale[READS_MAX], shift[READS_MAX]; /* z -> unit of what it reads */
     double r[READS_MAX]; /* variance of each component, that unit squared */
-    double rate_hz;      /* per track                                   */
+    bool has_relative;
+    double relative[READS_MAX]; /* u grows by so much of what is read      */
+    double rate_hz; /* per track                                   */
     int64_t silent_after_ns;
     bool has_gate;
     double gate_p; /* probability, 0 < p < 1                      */
