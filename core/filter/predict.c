@@ -165,16 +165,16 @@ void kf_predict(const struct rig_kind *kind, struct kf_work *w,
             copy(from, to);
         return;
     }
-    if (kind->n_components > 0) {
-        joined_predict(kind, w, from, t_ns - from->t_ns, to);
-        return;
-    }
     struct transition t = {n, w->Phi, w->Qu, w->Qd};
     double dt_s = (double)(t_ns - from->t_ns) * 1e-9;
     if (from->n_free == 0 && predict_kinematic(kind, from, dt_s, to)) {
         to->n = n;
         to->n_free = 0;
         to->t_ns = t_ns;
+        return;
+    }
+    if (kind->n_components > 0) {
+        joined_predict(kind, w, from, t_ns - from->t_ns, to);
         return;
     }
     for (int k = 0; k < kind->n_blocks; k++)

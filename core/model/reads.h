@@ -49,7 +49,6 @@ struct reads_error {
 
 struct reads_row {
     enum reads_kind kind;
-    struct reads_error error;
     int n_terms; /* range 2-3, bearing 2, range-rate as many, their rates
                     behind them                                          */
     struct reads_term term[READS_TERMS_MAX]; /* linear terms, factors,
@@ -60,6 +59,7 @@ struct reads_row {
                                                 towards the second        */
     double turn; /* bearing: +1 grows from the first axis towards the second,
                     -1 the other way                                      */
+    struct reads_error error;
 };
 
 struct reads {
