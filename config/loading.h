@@ -107,7 +107,7 @@ const cJSON *loading_component(struct loading *l, const cJSON *node, int i,
  * those of what is read. */
 void loading_errors(struct loading *l, const cJSON *sensor,
                     struct rig_sensor *s, char units[READS_MAX][RIG_UNIT_SIZE]);
-/* load_reads.c: what is read from far needs a start, until that is built. */
+/* load_place.c: what is read from far needs a start, until that is built. */
 void loading_check_starts(struct loading *l);
 /* Fills s->reads and the unit of each row ("rad" for a bearing); false if
  * anything was reported. */

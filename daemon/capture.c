@@ -125,6 +125,26 @@ out:
     return result;
 }
 
+enum capture_look capture_look(const char *path)
+{
+    enum { LOOK_SIZE = 4096 };
+    uint8_t bytes[LOOK_SIZE];
+    struct pcap_form form;
+    struct pcap_record record;
+    size_t used;
+    FILE *file = fopen(path, "rb");
+    size_t n = file == NULL ? 0 : fread(bytes, 1, sizeof bytes, file);
+    if (file != NULL)
+        fclose(file);
+    if (!pcap_read_file_head(bytes, n, &form))
+        return CAPTURE_NONE;
+    bool is_ours = pcap_read_record(&form, bytes + PCAP_FILE_HEAD_SIZE,
+                                    n - PCAP_FILE_HEAD_SIZE, &record,
+                                    &used) == PCAP_RECORD &&
+                   record.control != CONTROL_NONE;
+    return is_ours ? CAPTURE_OURS : CAPTURE_FOREIGN;
+}
+
 static int by_name(const void *a, const void *b)
 {
     return strcmp(*(char *const *)a, *(char *const *)b);

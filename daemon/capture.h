@@ -17,6 +17,14 @@ status capture_open(struct capture **c, const char *path,
                     struct err *err) MUST_USE;
 void capture_close(struct capture *c);
 
+/* What a file is, by its first bytes. */
+enum capture_look {
+    CAPTURE_NONE,    /* no capture                                        */
+    CAPTURE_FOREIGN, /* of another program, a rehearsal or an import      */
+    CAPTURE_OURS     /* begins with a control record: ropewalkd made it   */
+};
+enum capture_look capture_look(const char *path);
+
 /* The next datagram or control record; false at the end.  The payload lives
  * until the next call. */
 bool capture_next(struct capture *c, struct pcap_record *record);

@@ -159,19 +159,20 @@ static const cJSON *states_of(const struct board *board, const char *track)
     return cJSON_GetObjectItemCaseSensitive(best, "states");
 }
 
-static const char *colour_of(const char *verdict)
+/* Words first: good is plain, what needs a look is bold, lost is reversed. */
+static const char *style_of(const char *verdict)
 {
     if (strcmp(verdict, "good") == 0)
-        return "\033[32m";
-    return strcmp(verdict, "lost") == 0 ? "\033[31m" : "\033[33m";
+        return "";
+    return strcmp(verdict, "lost") == 0 ? "\033[7m" : "\033[1m";
 }
 
 static void draw_row(struct board *board, const struct board_row *row, FILE *to,
-                     bool in_colour)
+                     bool in_style)
 {
     fprintf(to, "\033[K%-20s %s%-9s%s %.23s  %s\n", row->track,
-            in_colour ? colour_of(row->verdict) : "", row->verdict,
-            in_colour ? "\033[0m" : "", row->time, row->why);
+            in_style ? style_of(row->verdict) : "", row->verdict,
+            in_style ? "\033[0m" : "", row->time, row->why);
     board->n_drawn++;
     const cJSON *states = states_of(board, row->track);
     for (int i = 0; i < row->n; i++) {
@@ -186,7 +187,7 @@ static void draw_row(struct board *board, const struct board_row *row, FILE *to,
     }
 }
 
-void board_draw(struct board *board, FILE *to, bool in_colour)
+void board_draw(struct board *board, FILE *to, bool in_style)
 {
     if (board->n_drawn > 0)
         fprintf(to, "\033[%dA", board->n_drawn);
@@ -196,7 +197,7 @@ void board_draw(struct board *board, FILE *to, bool in_colour)
             "");
     board->n_drawn = 1;
     for (int i = 0; i < board->n; i++)
-        draw_row(board, &board->row[i], to, in_colour);
+        draw_row(board, &board->row[i], to, in_style);
     if (board->n_hidden > 0) {
         fprintf(to,
                 "\033[Kmore tracks than %d are not shown; choose with "

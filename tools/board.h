@@ -23,6 +23,6 @@ void board_take(struct board *board, const char *line);
 /* The connection ended: what is shown is no longer current. */
 void board_close(struct board *board);
 
-void board_draw(struct board *board, FILE *to, bool in_colour);
+void board_draw(struct board *board, FILE *to, bool in_style);
 
 #endif

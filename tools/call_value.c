@@ -8,7 +8,7 @@
 
 #include "config/quantity.h"
 #include "core/wire/decode.h"
-#include "core/wire/pcap.h"
+#include "daemon/capture.h"
 
 double call_number(const struct call *call, const char *name, double otherwise,
                    bool *bad)
@@ -69,21 +69,9 @@ static int count_given(const struct call *call, const char *name)
     return n;
 }
 
-/* The arguments in the wrong order, most likely. */
-static bool is_capture(const char *path)
-{
-    uint8_t head[PCAP_FILE_HEAD_SIZE];
-    struct pcap_form form;
-    FILE *file = fopen(path, "rb");
-    size_t n = file == NULL ? 0 : fread(head, 1, sizeof head, file);
-    if (file != NULL)
-        fclose(file);
-    return pcap_read_file_head(head, n, &form);
-}
-
 struct settings *call_rig_path(const struct call *call, const char *path)
 {
-    if (is_capture(path)) {
+    if (capture_look(path) != CAPTURE_NONE) { /* arguments in wrong order */
         call_say(call, "%s: is a capture; the rig file comes first", path);
         return NULL;
     }

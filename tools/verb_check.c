@@ -152,7 +152,11 @@ static void print_load(const struct settings *s)
         printf(", about %.2g us each for the estimate on this machine, %.2g %% "
                "of a core",
                cost_s * 1e6, 100 * cost_s * rig_rate_hz(rig));
-    printf(" (a prefix: as many tracks as there is room for)");
+    for (int i = 0; i < rig->n_kinds; i++)
+        if (rig->kind[i].is_prefix) {
+            printf("; with as many tracks as limits.tracks has room for");
+            break;
+        }
     printf("\nlimits: %d tracks, %d ids a sender, %g repeated steps a sensor "
            "and second\n",
            rig->max_tracks, rig->max_ids_per_sender, rig->max_steps);

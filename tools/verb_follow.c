@@ -32,7 +32,7 @@ struct job {
     uint64_t n_wanted, n_estimates; /* n_wanted 0: for ever                */
     int64_t end_ms;                 /* INT64_MAX: for ever                 */
     struct board *board;            /* NULL: lines                         */
-    bool in_colour;
+    bool in_style;
     int64_t drawn_ms;
     char *line; /* FOLLOW_LINE_MAX bytes               */
     size_t len;
@@ -92,7 +92,7 @@ static void draw(struct job *job)
     int64_t now = monotonic_ms();
     if (job->board == NULL || now - job->drawn_ms < FOLLOW_DRAW_EVERY_MS)
         return;
-    board_draw(job->board, stdout, job->in_colour);
+    board_draw(job->board, stdout, job->in_style);
     job->drawn_ms = now;
 }
 
@@ -167,7 +167,7 @@ static int follow(struct job *job)
             return EXIT_FINE;
         if (job->board != NULL) {
             board_close(job->board);
-            board_draw(job->board, stdout, job->in_colour);
+            board_draw(job->board, stdout, job->in_style);
         }
         if (ferror(stdout))
             return EXIT_PROBLEM;
@@ -244,8 +244,8 @@ static bool take_options(struct job *job)
     job->n_wanted = (uint64_t)count;
     job->end_ms =
         seconds > 0 ? monotonic_ms() + (int64_t)(seconds * 1000) : INT64_MAX;
-    job->in_colour = call_may_colour(stdout);
-    if (job->in_colour && call_option(call, "json") == NULL)
+    job->in_style = call_may_colour(stdout);
+    if (job->in_style && call_option(call, "json") == NULL)
         job->board = board_new();
     return write_request(job);
 }

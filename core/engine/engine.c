@@ -165,17 +165,22 @@ static void count_settled(struct engine *e, struct track *t, struct step *s)
     kf_total_add(&t->total, s->dof, s->nis_used, s->v + t->m_max);
 }
 
-static void let_in(struct engine *e, struct track *t);
+/* Held measurements go in. */
+static void let_in(struct engine *e, struct track *t)
+{
+    int n_before = t->is_touched ? t->n_laid_before : t->n_laid;
+    t->is_touched = false;
+    if (t->is_confirmed)
+        release(e, t, n_before, e->now_ns - e->rig->hold_ns);
+}
 
 /* The next step to settle comes so long after the one before that the track
  * was retired in between: nothing earlier can come any more. */
 static bool is_anew(const struct track *t)
 {
     int i = t->n_settled;
-    if (!t->kind->is_prefix || i == 0)
-        return false;
-    return track_step(t, i)->t_ns - track_step(t, i - 1)->t_ns >
-           t->kind->lost_after_ns + TRACK_RETIRE_NS;
+    return i > 0 && track_is_over(t, track_step(t, i)->t_ns -
+                                         track_step(t, i - 1)->t_ns);
 }
 
 static void begin_anew(struct engine *e, struct track *t)
@@ -237,15 +242,6 @@ static void give_up_first(struct engine *e, struct track *t)
         roster_remove(&e->roster, t);
 }
 
-/* Held measurements go in. */
-static void let_in(struct engine *e, struct track *t)
-{
-    int n_before = t->is_touched ? t->n_laid_before : t->n_laid;
-    t->is_touched = false;
-    if (t->is_confirmed)
-        release(e, t, n_before, e->now_ns - e->rig->hold_ns);
-}
-
 /* The track that is due at due_ns, and nothing of it that is due later: steps
  * of all tracks settle in one order, by t and id, whenever that happens. */
 static void move_on(struct engine *e, struct track *t, int64_t due_ns)
@@ -295,11 +291,9 @@ void engine_end(struct engine *e)
 static void retire(struct engine *e, struct track *t)
 {
     const struct track_state *tip = track_tip(t);
-    if (!t->kind->is_prefix || !t->is_confirmed || t->n > t->n_settled)
-        return;
     int64_t since_ns = tip ? tip->kf.t_ns : e->line_start_ns;
-    if (e->now_ns - since_ns <=
-        t->kind->lost_after_ns + TRACK_RETIRE_NS + e->rig->horizon_ns)
+    if (!t->is_confirmed || t->n > t->n_settled ||
+        !track_is_over(t, e->now_ns - since_ns - e->rig->horizon_ns))
         return;
     speak_event(e, EVENT_RETIRED, t, -1, e->now_ns);
     roster_remove(&e->roster, t);

@@ -169,6 +169,13 @@ int track_lay(struct track *t, const struct lay *lay, int64_t until_ns);
 /* State after the newest laid step; NULL before the first. */
 const struct track_state *track_tip(const struct track *t);
 
+/* True if a prefix track is over after so long without a measurement. */
+static inline bool track_is_over(const struct track *t, int64_t gap_ns)
+{
+    return t->kind->is_prefix &&
+           gap_ns > t->kind->lost_after_ns + TRACK_RETIRE_NS;
+}
+
 /* The next step settles: returns it with the state after it.  The ground
  * moves on; the step stays valid until the next call on this track. */
 struct step *track_settle(struct track *t, const struct lay *lay,

@@ -26,9 +26,8 @@ static void take_time(struct track *t, const struct track_state *from,
                       struct step *s)
 {
     const struct rig_kind *kind = t->kind;
-    bool is_reborn =
-        kind->is_prefix && from->is_born && !from->is_floating &&
-        s->t_ns - from->kf.t_ns > kind->lost_after_ns + TRACK_RETIRE_NS;
+    bool is_reborn = from->is_born && !from->is_floating &&
+                     track_is_over(t, s->t_ns - from->kf.t_ns);
     if (!from->is_born || is_reborn) {
         memset(to, 0, sizeof *to);
         to->is_born = 1;
@@ -77,7 +76,8 @@ static bool vote(struct track_state *st, int sensor, bool is_used)
     uint64_t bit = sensor < 64 ? (uint64_t)1 << sensor : 0;
     st->heard |= bit;
     st->refusing = is_used ? st->refusing & ~bit : st->refusing | bit;
-    return 2 * count_bits(st->refusing) > count_bits(st->heard);
+    return st->refusing != 0 &&
+           2 * count_bits(st->refusing) > count_bits(st->heard);
 }
 
 static uint16_t count_up(uint16_t *n)

@@ -74,8 +74,8 @@ static void put_component(const struct rig_kind *kind, int i, double dt_s,
     lti_transition(m, component_A(kind, i), component_W(kind, i),
                    component_c(kind, i), dt_s, j->scratch, j->Phi, j->Q,
                    j->shift);
-    /* Q of a long gap of a growing system may be no covariance: predict_whole
-     * sees that its result is not finite. */
+    /* Q of a long gap of a growing system may be no covariance: is_sound
+     * will see that the result is not finite. */
     if (ud_factor(m, j->Q, j->ud) != ST_OK)
         for (int a = 0; a < m; a++)
             j->ud[UD_AT(a, a)] = real_nan();

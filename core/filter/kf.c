@@ -11,38 +11,40 @@ size_t kf_bytes(const struct rig_kind *kind)
     return sizeof(struct kf) + (n + UD_SIZE(n) + n * n) * sizeof(double);
 }
 
-void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
+static void empty(const struct rig_kind *kind, struct kf *f)
 {
-    int n = kind->n;
-    f->t_ns = t_ns;
-    f->n = n;
+    f->n = kind->n;
     f->n_free = 0;
     memset(f->v, 0, kf_bytes(kind) - sizeof *f);
-    for (int i = 0; i < n; i++) {
+}
+
+/* State i at mean and u, or not known at all. */
+static void start(struct kf *f, int i, bool is_known, double mean, double u)
+{
+    if (is_known) {
+        kf_x(f)[i] = mean;
+        kf_ud(f)[UD_AT(i, i)] = u * u;
+    } else {
+        kf_B(f)[f->n * f->n_free++ + i] = 1;
+    }
+}
+
+void kf_birth(const struct rig_kind *kind, int64_t t_ns, struct kf *f)
+{
+    empty(kind, f);
+    f->t_ns = t_ns;
+    for (int i = 0; i < kind->n; i++) {
         const struct rig_state *s = &kind->state[i];
-        if (s->has_prior) {
-            kf_x(f)[i] = s->prior_mean;
-            kf_ud(f)[UD_AT(i, i)] = s->prior_u * s->prior_u;
-        } else {
-            kf_B(f)[n * f->n_free++ + i] = 1;
-        }
+        start(f, i, s->has_prior, s->prior_mean, s->prior_u);
     }
 }
 
 void kf_forget(const struct rig_kind *kind, struct kf *f)
 {
-    int n = kind->n;
-    f->n = n;
-    f->n_free = 0;
-    memset(f->v, 0, kf_bytes(kind) - sizeof *f);
-    for (int i = 0; i < n; i++) {
+    empty(kind, f);
+    for (int i = 0; i < kind->n; i++) {
         const struct rig_state *s = &kind->state[i];
-        if (s->is_stationary) {
-            kf_x(f)[i] = s->stationary_mean;
-            kf_ud(f)[UD_AT(i, i)] = s->stationary_u * s->stationary_u;
-        } else {
-            kf_B(f)[n * f->n_free++ + i] = 1;
-        }
+        start(f, i, s->is_stationary, s->stationary_mean, s->stationary_u);
     }
 }
 

@@ -1,5 +1,6 @@
 /* The tool as a process: replay, send and follow. */
 /* SPDX-License-Identifier: Apache-2.0 */
+#include "core/wire/pcap.h"
 #include "tests/suite.h"
 
 #include <arpa/inet.h>
@@ -106,6 +107,54 @@ START_TEST(replay_twice_gives_the_same_bytes)
     ck_assert_str_eq(tool_out, "");
     tool_read(tool_path("b.jsonl"), tool_out);
     ck_assert_str_eq(tool_out, first);
+}
+END_TEST
+
+static size_t size_of(const char *path)
+{
+    return tool_read(path, tool_out);
+}
+
+/* What is read, and what ropewalkd recorded, stays as it is. */
+START_TEST(nothing_that_counts_is_written_over)
+{
+    uint8_t record[256], head[PCAP_FILE_HEAD_SIZE];
+    const char *rig = make_capture(), *capture = tool_path("a.pcap");
+    size_t before = size_of(capture), n;
+    ck_assert_int_eq(TOOL("replay", rig, capture, "--out", capture),
+                     EXIT_NOT_THERE);
+    ck_assert_ptr_nonnull(strstr(tool_said, "is read as well"));
+    ck_assert_int_eq(TOOL("replay", rig, capture, "--out", rig),
+                     EXIT_NOT_THERE);
+    ck_assert_uint_eq(size_of(capture), before);
+    ck_assert_int_eq(TOOL("replay", capture, rig), EXIT_BAD_SETTINGS);
+    ck_assert_ptr_nonnull(strstr(tool_said, "the rig file comes first"));
+
+    const char *ours = tool_path("ours.pcap");
+    FILE *file = fopen(ours, "wb");
+    pcap_write_file_head(head);
+    n = pcap_write_control(record, sizeof record, CONTROL_START, 1, 1,
+                           "build hash");
+    ck_assert_uint_gt(n, 0);
+    fwrite(head, sizeof head, 1, file);
+    fwrite(record, n, 1, file);
+    fclose(file);
+    before = size_of(ours);
+    ck_assert_int_eq(TOOL("replay", rig, capture, "--out", ours),
+                     EXIT_NOT_THERE);
+    ck_assert_ptr_nonnull(strstr(tool_said, "ropewalkd made"));
+    ck_assert_uint_eq(size_of(ours), before);
+    /* Its start names another rig file than this. */
+    ck_assert_int_eq(TOOL("replay", rig, ours), EXIT_FINE);
+    ck_assert_ptr_nonnull(strstr(tool_said, "another rig file"));
+}
+END_TEST
+
+START_TEST(a_port_that_cannot_be_is_refused)
+{
+    ck_assert_int_eq(TOOL("send", "laser", "1", "--to", "127.0.0.1:99999"),
+                     EXIT_WRONG_USE);
+    ck_assert_ptr_nonnull(strstr(tool_said, "up to 65535"));
 }
 END_TEST
 
@@ -251,6 +300,8 @@ Suite *suite(void)
                         0, 4);
     tcase_add_test(t, a_summary_counts_every_measurement_once);
     tcase_add_test(t, replay_twice_gives_the_same_bytes);
+    tcase_add_test(t, nothing_that_counts_is_written_over);
+    tcase_add_test(t, a_port_that_cannot_be_is_refused);
     tcase_add_test(t, datagrams_to_another_port_are_counted_and_said);
     suite_add_tcase(s, t);
     t = tcase_create("network");

@@ -5,42 +5,8 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "tests/suite.h"
-
-static const char complete[] = "tests/data/rigs/complete.json";
-
-static const char small[] =
-    "{\"tracks\": {\"carriage\": {\"state\": {\"model\": \"random-walk\","
-    " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},\n"
-    " \"sensors\": {\"laser\": {\"reads\": \"x\", \"u\": \"2 mm\"}}}";
-
-static struct settings *load(const char *path)
-{
-    struct settings *s;
-    struct problems p;
-    problems_init(&p);
-    status st = settings_load(&s, path, NULL, 0, &p);
-    ck_assert_msg(st == ST_OK, "%s", p.text);
-    ck_assert_int_eq(p.n, 0);
-    problems_fini(&p);
-    return s;
-}
-
-/* The reports on a text with changes; "" and *s when it loads. */
-static char *parse(struct settings **s, const char *text,
-                   const struct settings_change *changes, int n)
-{
-    struct problems p;
-    problems_init(&p);
-    status st =
-        settings_parse(s, "rig.json", text, strlen(text), changes, n, &p);
-    ck_assert_int_eq(st, p.n == 0 ? ST_OK : ST_SCHEMA);
-    ck_assert((*s != NULL) == (p.n == 0));
-    char *said = strdup(p.text != NULL ? p.text : "");
-    problems_fini(&p);
-    return said;
-}
+#include "tests/unit/load_case.h"
 
 static const struct rig_sensor *sensor(const struct rig *rig, const char *name)
 {
@@ -63,7 +29,7 @@ static void near(double got, double want)
 
 START_TEST(a_complete_file_fills_what_the_daemon_needs)
 {
-    struct settings *s = load(complete);
+    struct settings *s = load_file();
     const struct rig *r = &s->rig;
     const char *folder = "/tests/data/rigs/captures";
     size_t n = strlen(s->folder);
@@ -100,7 +66,7 @@ END_TEST
 
 START_TEST(a_complete_file_fills_the_tracks)
 {
-    struct settings *s = load(complete);
+    struct settings *s = load_file();
     const struct rig_kind *k = kind(&s->rig, "carriage");
     ck_assert_int_eq(s->rig.n_kinds, 5);
     ck_assert_int_eq(k->n_blocks, 3);
@@ -140,7 +106,7 @@ END_TEST
 
 START_TEST(a_complete_file_fills_the_sensors)
 {
-    struct settings *s = load(complete);
+    struct settings *s = load_file();
     const struct rig_sensor *q = sensor(&s->rig, "laser");
     ck_assert_int_eq(s->rig.n_sensors, 7);
     for (int i = 1; i < s->rig.n_sensors; i++)
@@ -184,7 +150,7 @@ END_TEST
 
 START_TEST(like_copies_absent_keys_whole)
 {
-    struct settings *s = load(complete);
+    struct settings *s = load_file();
     const struct rig_sensor *q = sensor(&s->rig, "second");
     near(q->r[0], 12e-6);
     near(q->rate_hz, 50);
@@ -200,7 +166,7 @@ END_TEST
 START_TEST(what_is_absent_has_its_default)
 {
     struct settings *s;
-    free(parse(&s, small, NULL, 0));
+    free(load_text(&s, load_small, NULL, 0));
     ck_assert_ptr_nonnull(s);
     const struct rig *r = &s->rig;
     ck_assert_str_eq(s->folder, "");
@@ -232,10 +198,10 @@ END_TEST
 START_TEST(a_prefix_adds_room_for_64_tracks)
 {
     struct settings *s;
-    char *text = strdup(small), *name;
+    char *text = strdup(load_small), *name;
     while ((name = strstr(text, "carriage")) != NULL)
         memcpy(name, "carria-*", 8);
-    free(parse(&s, text, NULL, 0));
+    free(load_text(&s, text, NULL, 0));
     ck_assert_ptr_nonnull(s);
     ck_assert_int_eq(s->rig.max_tracks, 64);
     ck_assert_int_eq(s->rig.max_ids_per_sender, 64);
@@ -254,7 +220,7 @@ START_TEST(changes_are_laid_over_the_file)
         {"limits", "{\"tracks\": 3}"},
         {"sensors.second", "{\"like\": \"laser\", \"gate\": \"off\"}"}};
     struct settings *s;
-    char *said = parse(&s, small, changes, 6);
+    char *said = load_text(&s, load_small, changes, 6);
     ck_assert_str_eq(said, "");
     near(s->rig.kind[0].block[0].q, 4e-4);
     ck_assert_int_eq(s->rig.horizon_ns, 1000000000);
@@ -274,7 +240,7 @@ static void change(const char *path, const char *value, const char *want)
 {
     struct settings_change one = {path, value};
     struct settings *s;
-    char *said = parse(&s, small, &one, 1);
+    char *said = load_text(&s, load_small, &one, 1);
     ck_assert_str_eq(said, want);
     settings_free(s);
     free(said);
@@ -311,7 +277,7 @@ START_TEST(each_wrong_change_is_named_in_its_order)
     static const struct settings_change changes[] = {
         {"order.horizon", "1 s"}, {"rig", "5"}, {"sensors.laser.u", "0"}};
     struct settings *s;
-    char *said = parse(&s, small, changes, 3);
+    char *said = load_text(&s, load_small, changes, 3);
     ck_assert_str_eq(
         said, "--set rig: error: \"rig\" must be a text in quotation marks\n"
               "       = meant here: name of the rig or of the test\n"
@@ -330,7 +296,8 @@ static void expect_folder(const char *path, const char *folder,
     struct problems p;
     problems_init(&p);
     ck_assert_int_eq(
-        settings_parse(&s, path, small, strlen(small), &one, 1, &p), ST_OK);
+        settings_parse(&s, path, load_small, strlen(load_small), &one, 1, &p),
+        ST_OK);
     ck_assert_str_eq(s->folder, want);
     settings_free(s);
     problems_fini(&p);
@@ -347,13 +314,13 @@ END_TEST
 START_TEST(as_many_sensors_as_there_are_places_load)
 {
     struct settings *s;
-    char *said =
-        parse(&s,
-              "{\"tracks\": {\"c\": {\"state\": {\"model\": \"random-walk\","
-              " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},"
-              " \"sensors\": {\"s{1..200}\": {\"reads\": \"x\", \"u\": 1},"
-              " \"t{1..56}\": {\"reads\": \"x\", \"u\": 1}}}",
-              NULL, 0);
+    char *said = load_text(
+        &s,
+        "{\"tracks\": {\"c\": {\"state\": {\"model\": \"random-walk\","
+        " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},"
+        " \"sensors\": {\"s{1..200}\": {\"reads\": \"x\", \"u\": 1},"
+        " \"t{1..56}\": {\"reads\": \"x\", \"u\": 1}}}",
+        NULL, 0);
     ck_assert_str_eq(said, "");
     ck_assert_int_eq(s->rig.n_sensors, RIG_SENSORS_MAX);
     settings_free(s);
@@ -365,10 +332,10 @@ START_TEST(a_sensor_is_removed_after_others_have_copied_it)
 {
     static const struct settings_change changes[] = {{"sensors.laser", "null"}};
     struct settings *s;
-    char text[sizeof small + 64];
+    char text[sizeof load_small + 64];
     snprintf(text, sizeof text, "%.*s, \"second\": {\"like\": \"laser\"}}}",
-             (int)strlen(small) - 2, small);
-    char *said = parse(&s, text, changes, 1);
+             (int)strlen(load_small) - 2, load_small);
+    char *said = load_text(&s, text, changes, 1);
     ck_assert_str_eq(said, "");
     ck_assert_int_eq(s->rig.n_sensors, 1);
     ck_assert_str_eq(s->rig.sensor[0].name, "second");

@@ -4,8 +4,8 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "tests/suite.h"
+#include "tests/unit/load_case.h"
 
 static const char text[] =
     "{\"tracks\": {\"carriage\": {\"state\": [\n"
@@ -19,14 +19,10 @@ static void expect_refusal(const char *path, const char *value,
 {
     const struct settings_change change = {path, value};
     struct settings *s;
-    struct problems p;
-    problems_init(&p);
-    status st =
-        settings_parse(&s, "rig.json", text, strlen(text), &change, 1, &p);
-    ck_assert_int_eq(st, ST_SCHEMA);
+    char *said = load_text(&s, text, &change, 1);
     ck_assert_ptr_null(s);
-    ck_assert_str_eq(p.text, want);
-    problems_fini(&p);
+    ck_assert_str_eq(said, want);
+    free(said);
 }
 
 START_TEST(a_block_is_named_by_its_name_or_its_place)
@@ -36,16 +32,13 @@ START_TEST(a_block_is_named_by_its_name_or_its_place)
         {"tracks.carriage.state.0.unmodelled.accel", "3 m/s2"},
         {"tracks.carriage.state.x.unmodelled.lasts", "0.5 s"}};
     struct settings *s;
-    struct problems p;
-    problems_init(&p);
-    status st =
-        settings_parse(&s, "rig.json", text, strlen(text), changes, 3, &p);
-    ck_assert_msg(st == ST_OK, "%s", p.text);
+    char *said = load_text(&s, text, changes, 3);
+    ck_assert_str_eq(said, "");
+    free(said);
     const struct rig_kind *k = &s->rig.kind[0];
     ck_assert_double_eq_tol(k->block[0].q, 4.5, 1e-12); /* 3^2 0.5 */
     ck_assert_str_eq(k->state[2].unit, "%");
     settings_free(s);
-    problems_fini(&p);
 }
 END_TEST
 

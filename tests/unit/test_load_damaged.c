@@ -5,34 +5,15 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "tests/suite.h"
-
-static const char complete[] = "tests/data/rigs/complete.json";
-
-static const char small[] =
-    "{\"tracks\": {\"carriage\": {\"state\": {\"model\": \"random-walk\","
-    " \"name\": \"x\", \"unit\": \"m\", \"q\": 1}}},\n"
-    " \"sensors\": {\"laser\": {\"reads\": \"x\", \"u\": \"2 mm\"}}}";
-
-static struct settings *load(const char *path)
-{
-    struct settings *s;
-    struct problems p;
-    problems_init(&p);
-    status st = settings_load(&s, path, NULL, 0, &p);
-    ck_assert_msg(st == ST_OK, "%s", p.text);
-    ck_assert_int_eq(p.n, 0);
-    problems_fini(&p);
-    return s;
-}
+#include "tests/unit/load_case.h"
 
 /* Sets one byte at 50 places over the file: either it is refused, or (inside
  * a comment) nothing differs. */
 START_TEST(a_corrupt_byte_is_refused_or_changes_nothing)
 {
     static const char bytes[] = {'\x01', '\x00', '\xff'};
-    struct settings *good = load(complete), *s;
+    struct settings *good = load_file(), *s;
     char *text = malloc(good->text_len + 1);
     int n_refused = 0;
     for (int i = 0; i < 50; i++) {
@@ -41,8 +22,8 @@ START_TEST(a_corrupt_byte_is_refused_or_changes_nothing)
         memcpy(text, good->text, good->text_len + 1);
         text[at] = bytes[i % 3];
         problems_init(&p);
-        status st =
-            settings_parse(&s, complete, text, good->text_len, NULL, 0, &p);
+        status st = settings_parse(&s, load_complete, text, good->text_len,
+                                   NULL, 0, &p);
         n_refused += st == ST_SCHEMA;
         ck_assert_int_eq(st == ST_OK, p.n == 0);
         if (st == ST_OK) {
@@ -62,11 +43,12 @@ END_TEST
 START_TEST(a_torn_file_is_refused)
 {
     struct settings *s;
-    for (size_t n = 0; n < sizeof small - 1; n += 3) {
+    for (size_t n = 0; n < sizeof load_small - 1; n += 3) {
         struct problems p;
         problems_init(&p);
-        ck_assert_int_eq(settings_parse(&s, "rig.json", small, n, NULL, 0, &p),
-                         ST_SCHEMA);
+        ck_assert_int_eq(
+            settings_parse(&s, "rig.json", load_small, n, NULL, 0, &p),
+            ST_SCHEMA);
         ck_assert_int_eq(p.n, 1);
         problems_fini(&p);
     }

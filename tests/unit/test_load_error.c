@@ -6,14 +6,12 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "tests/suite.h"
+#include "tests/unit/load_case.h"
 
 static char *load(struct settings **s, const char *sensor)
 {
     char text[2048];
-    struct problems p;
-    problems_init(&p);
     snprintf(
         text, sizeof text,
         "{\"tracks\": {\"c\": {\"state\": [{\"model\":"
@@ -23,11 +21,7 @@ static char *load(struct settings **s, const char *sensor)
         " \"1\"}], \"good\": {\"u\": {\"x\": \"1 m\"}}}},"
         " \"sensors\": {\"s\": {%s}}}",
         sensor);
-    status st = settings_parse(s, "rig.json", text, strlen(text), NULL, 0, &p);
-    ck_assert((st == ST_OK) == (*s != NULL));
-    char *said = strdup(p.text != NULL ? p.text : "");
-    problems_fini(&p);
-    return said;
+    return load_text(s, text, NULL, 0);
 }
 
 static struct settings *good(const char *sensor)

@@ -5,9 +5,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "core/model/component.h"
 #include "tests/suite.h"
+#include "tests/unit/load_case.h"
 
 static const double pi = 3.14159265358979323846;
 
@@ -15,17 +15,11 @@ static const double pi = 3.14159265358979323846;
 static char *load(struct settings **s, const char *block)
 {
     char text[2048];
-    struct problems p;
-    problems_init(&p);
     snprintf(text, sizeof text,
              "{\"tracks\": {\"c\": {\"state\": %s}},"
              " \"sensors\": {\"s\": {\"reads\": \"x\", \"u\": 1}}}",
              block);
-    status st = settings_parse(s, "rig.json", text, strlen(text), NULL, 0, &p);
-    ck_assert((st == ST_OK) == (*s != NULL));
-    char *said = strdup(p.text != NULL ? p.text : "");
-    problems_fini(&p);
-    return said;
+    return load_text(s, text, NULL, 0);
 }
 
 static struct settings *good(const char *block)

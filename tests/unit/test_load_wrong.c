@@ -4,9 +4,9 @@
 #include <stdlib.h>
 #include <string.h>
 
-#include "config/load.h"
 #include "config/table.h"
 #include "tests/suite.h"
+#include "tests/unit/load_case.h"
 #include "tests/unit/load_wrong.h"
 
 #define COUNT(a) (int)(sizeof(a) / sizeof *(a))
@@ -15,13 +15,8 @@
 static char *refuse(const char *text)
 {
     struct settings *s;
-    struct problems p;
-    problems_init(&p);
-    status st = settings_parse(&s, "rig.json", text, strlen(text), NULL, 0, &p);
-    ck_assert_msg(st == ST_SCHEMA, "%s", text);
-    ck_assert_ptr_null(s);
-    char *said = strdup(p.text);
-    problems_fini(&p);
+    char *said = load_text(&s, text, NULL, 0);
+    ck_assert_msg(s == NULL, "%s", text);
     return said;
 }
 
