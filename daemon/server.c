@@ -199,9 +199,24 @@ static void signals_close(struct server *s)
 /* --- what the operator is told
  * ---------------------------------------------------------- */
 
+/* A span in the unit that people would say it in. */
+static void print_span(double span_s, char *out, size_t size)
+{
+    static const struct {
+        double s;
+        const char *name;
+    } units[] = {{86400, "days"}, {3600, "h"}, {60, "min"}, {1, "s"}};
+    for (int i = 0; i < 4; i++)
+        if (span_s >= 2 * units[i].s) {
+            snprintf(out, size, "%.3g %s", span_s / units[i].s, units[i].name);
+            return;
+        }
+    snprintf(out, size, "%.3g ms", span_s * 1e3);
+}
+
 static void tell_reach(const struct server *s)
 {
-    char udp[80], tcp[80];
+    char udp[80], tcp[80], span[32];
     endpoint_print(&s->udp, udp, sizeof udp);
     endpoint_print(&s->tcp, tcp, sizeof tcp);
     log_info("receiving on udp %s: %s", udp,
@@ -220,9 +235,10 @@ static void tell_reach(const struct server *s)
                  tcp);
     int size = receive_buffer(ingest_receive(s->ingest));
     double rate_hz = rig_rate_hz(&s->settings->rig);
-    log_info("socket buffer %d KiB: bridges %.0f ms of standstill at the "
-             "declared %.0f datagrams/s%s",
-             size / 1024, size / 832.0 / rate_hz * 1e3, rate_hz,
+    print_span(size / 832.0 / rate_hz, span, sizeof span);
+    log_info("socket buffer %d KiB: bridges %s of standstill at the declared "
+             "%.0f datagrams/s%s",
+             size / 1024, span, rate_hz,
              size < s->settings->udp_buffer_bytes
                  ? "; less than receive.buffer: raise net.core.rmem_max"
                  : "");
@@ -241,9 +257,11 @@ static void tell_capture(const struct server *s)
                  recorder_folder(s->recorder));
         return;
     }
-    log_info("capture in %s: the disk lasts %.1f h at the declared rates, "
-             "down to capture.floor",
-             recorder_folder(s->recorder), lasts_s / 3600);
+    char span[32];
+    print_span(lasts_s, span, sizeof span);
+    log_info("capture in %s: the disk lasts %s at the declared rates, down to "
+             "capture.floor",
+             recorder_folder(s->recorder), span);
 }
 
 static status write_ports(const struct server *s, struct err *err)

@@ -104,8 +104,8 @@ static void print_kind(const struct rig *rig, int index)
     }
     rig_text_time(kind->recover_for_ns, text, sizeof text);
     printf("  recovery: widened after %d refused in a row for %s; a false "
-           "burst of all\n  sensors is withstood up to %.3g s, one beside "
-           "accepted sensors for ever\n",
+           "burst of most\n  sensors is withstood up to %.3g s; fewer are set "
+           "aside and never followed\n",
            kind->recover_refused, text, rig_text_burst_s(rig, index));
 }
 
