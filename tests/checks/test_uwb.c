@@ -104,7 +104,10 @@ static double walk(const char *gate)
     score.square = 0;
     cJSON_Delete(replay_lines(lines, take, &score));
     ck_assert_int_gt(score.n, 8000);
-    return sqrt(score.square / score.n);
+    double rmse_m = sqrt(score.square / score.n);
+    printf("walk: gate %s, RMSE %.3f m over %d estimates\n", gate, rmse_m,
+           (int)score.n);
+    return rmse_m;
 }
 
 START_TEST(the_walk_is_followed_within_85_cm)
@@ -207,6 +210,9 @@ START_TEST(late_and_too_late_are_as_anybody_counts_them)
         ck_assert_int_eq(count_of(counts, sensors[i], "too-late"),
                          tardy.too_late[i]);
         ck_assert_int_eq(count_of(tallies, sensors[i], "late"), tardy.late[i]);
+        printf("walk: horizon %d ms, %s: late %d, too-late %d\n",
+               horizons_ms[_i], sensors[i], (int)tardy.late[i],
+               (int)tardy.too_late[i]);
     }
     ck_assert_int_gt(tardy.too_late[0] + tardy.late[0], 0);
     cJSON_Delete(summary);

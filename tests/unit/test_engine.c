@@ -153,6 +153,8 @@ START_TEST(a_million_measurements_allocate_nothing)
     }
     run_stop(d.run, T0 + (int64_t)1000001 * 10 * MS);
     is_counting = false;
+    printf("allocations: %llu in 1000000 measurements\n",
+           (unsigned long long)n_allocations);
     ck_assert_uint_eq(n_allocations, 0);
     drive_check_ledgers(&d, 1000000, 1000000);
     drive_fini(&d);
@@ -221,6 +223,7 @@ static int covered(const char *rig_text, double q)
 START_TEST(two_u_hold_the_truth_as_often_as_they_say)
 {
     int n = covered(one_axis, 0.02);
+    printf("coverage: %d of 200 tracks within 2 u\n", n);
     ck_assert_msg(n >= 181 && n <= 199, "%d of 200", n);
 }
 END_TEST
@@ -228,6 +231,7 @@ END_TEST
 START_TEST(with_q_ten_times_wrong_two_u_fail_to_hold_the_truth)
 {
     int n = covered(one_axis, 0.2);
+    printf("coverage: %d of 200 with q ten times too small\n", n);
     ck_assert_msg(n < 181, "%d of 200: a wrong q passed", n);
 }
 END_TEST
